@@ -1,0 +1,1 @@
+"""How sure a number is, and what may be decided from it. Pure numbers, no files, no instruments."""
