@@ -96,7 +96,7 @@ class Problem:
     def __str__(self) -> str:
         head = f"{self.where}: " if self.where else ""
         kind = "" if self.severity == "error" else f"{self.severity}: "
-        tail = f" {self.advice}" if self.advice else ""
+        tail = f"{'' if self.message.endswith(('.', '?')) else '.'} {self.advice}" if self.advice else ""
         return f"{head}{kind}{self.message}{tail}"
 
 

@@ -1,0 +1,163 @@
+"""The sequence file, edition 1."""
+
+from __future__ import annotations
+
+import re
+from typing import Annotated, Any, Literal
+
+import numpy as np
+from pydantic import BeforeValidator, Discriminator, Field, Tag, create_model, model_validator
+
+from benchrun.rf.twoport import FloatArray
+from benchrun.sequence.fields import (
+    Decibel,
+    Duration,
+    FileModel,
+    Frequency,
+    Listed,
+    Name,
+    Power,
+    Voltage,
+    trouble,
+)
+from benchrun.sequence.steps import STEP_KINDS, StepModel
+
+__all__ = ["CAUTIONS", "Fixture", "Sequence", "SweepSetup", "Unit", "Withstands"]
+
+CAUTIONS: dict[str, str] = {
+    "static-sensitive": "The part is sensitive to static: wear the wrist strap, touch ground before the part.",
+    "connector care": "Inspect and clean connectors, align them, turn only the nut, finish with the torque wrench.",
+    "RF power": "RF power is present: switch the source off before opening a connection, and keep clear of antennas "
+    "while transmitting. Local exposure codes and licensed practice rule.",
+    "DC supply": "DC is applied: check polarity and current limit before switching on; local electrical codes rule.",
+    "hot parts": "Parts may be hot after use: let them cool or use tools.",
+}
+"""The usual cautions by name; any other text stands for itself."""
+
+
+class Withstands(FileModel):
+    """What may reach a part or a port without harm."""
+
+    power: Power
+    dc: Voltage = 0.0
+
+
+class Fixture(FileModel):
+    """What the unit sits in; names are the items that hands are asked to connect."""
+
+    left: str | None = None
+    right: str | None = None
+
+
+def _pattern(value: object) -> object:
+    if isinstance(value, str):
+        try:
+            re.compile(value)
+        except re.error as error:
+            raise ValueError(f"{value!r} is no regular expression: {error}") from None
+    return value
+
+
+class Unit(FileModel):
+    """The part under test."""
+
+    part: str = Field(min_length=1, max_length=80)
+    serial: Annotated[str, BeforeValidator(_pattern)] = Field(description="regular expression of a whole serial number")
+    ports: Literal[1, 2] = 2
+    withstands: Withstands
+    gain: Decibel = Field(default=0.0, description="the unit's greatest gain")
+    fixture: Fixture | None = None
+
+
+class SweepSetup(FileModel):
+    """One way to sweep."""
+
+    from_: Frequency | None = Field(default=None, alias="from")
+    to: Frequency | None = None
+    at: Annotated[tuple[Frequency, ...], Listed] | None = Field(default=None, min_length=2, max_length=100_001)
+    points: int | None = Field(default=None, ge=2, le=100_001)
+    spacing: Literal["linear", "log"] = "linear"
+    bandwidth: Frequency = Field(gt=0, description="IF bandwidth")
+    power: Power
+    averages: int = Field(default=1, ge=1, le=10_000)
+    settle: Duration | None = None
+
+    @model_validator(mode="after")
+    def _complete(self) -> SweepSetup:
+        if self.at is not None:
+            if self.from_ is not None or self.to is not None or self.points is not None:
+                raise trouble("has a list (`at`) and a span (`from`, `to`, `points`); keep one of them", "at")
+            if any(b <= a for a, b in zip(self.at, self.at[1:], strict=False)):
+                raise trouble("`at`: frequencies do not increase", "at")
+            return self
+        for key, value in (("from", self.from_), ("to", self.to), ("points", self.points)):
+            if value is None:
+                raise trouble(f"has no `{key}`; a sweep needs `from`, `to` and `points`, or a list `at`")
+        if self.from_ is not None and self.to is not None and self.from_ >= self.to:
+            raise trouble("`from` is not below `to`", "to")
+        if self.from_ == 0:
+            raise trouble("`from` is 0 Hz; an analyzer starts above", "from")
+        return self
+
+    def grid(self) -> FloatArray:
+        """Frequencies in Hz, ``(f,)``."""
+        if self.at is not None:
+            return np.asarray(self.at, dtype=np.float64)
+        assert self.from_ is not None and self.to is not None and self.points is not None  # checked on reading
+        space = np.geomspace if self.spacing == "log" else np.linspace
+        return np.asarray(space(self.from_, self.to, self.points), dtype=np.float64)
+
+
+_ENTRIES: dict[str, Any] = {
+    kind: create_model(f"{model.__name__}Entry", __base__=FileModel, step=(model, Field(alias=kind)))
+    for kind, model in STEP_KINDS.items()
+}
+
+
+def _kind(value: Any) -> str:
+    if isinstance(value, dict) and len(value) == 1:
+        return str(next(iter(value)))
+    if isinstance(value, FileModel):
+        return str(getattr(value, "step").kind)  # noqa: B009 - the field exists only on created models
+    return "a step is one key, its kind, with its settings below"
+
+
+def _union() -> Any:
+    members = [Annotated[model, Tag(kind)] for kind, model in _ENTRIES.items()]
+    union: Any = members[0]
+    for member in members[1:]:
+        union = union | member
+    return Annotated[union, Discriminator(_kind)]
+
+
+Entry = _union()
+
+
+class Sequence(FileModel):
+    """A named test."""
+
+    sequence: Name = Field(description="name of the sequence")
+    edition: Literal[1]
+    title: str = Field(min_length=1, max_length=120)
+    unit: Unit
+    cautions: Annotated[tuple[str, ...], Listed] = ()
+    sweeps: dict[Name, SweepSetup] = Field(min_length=1)
+    entries: Annotated[tuple[Entry, ...], Listed] = Field(alias="steps", min_length=1)
+
+    @property
+    def steps(self) -> tuple[StepModel, ...]:
+        """The steps themselves, in order."""
+        return tuple(entry.step for entry in self.entries)
+
+    @property
+    def caution_texts(self) -> tuple[str, ...]:
+        """The cautions in full."""
+        return tuple(CAUTIONS.get(text, text) for text in self.cautions)
+
+    def sweep_of(self, step: StepModel) -> SweepSetup:
+        """The sweep that a calibrate or sweep step uses."""
+        named = getattr(step, "sweep", None)
+        if named is None:
+            calibration = next(s for s in self.steps if s.name == getattr(step, "with_", None))
+            named = getattr(calibration, "sweep")  # noqa: B009 - only calibrations are named by `with`
+        return self.sweeps[named]
