@@ -1,0 +1,79 @@
+"""What a step leaves for the next: S-parameters on a grid, with the variations that carry uncertainty."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TypeAlias
+
+import numpy as np
+
+from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
+
+__all__ = ["Data", "Network", "combine"]
+
+Data: TypeAlias = TwoPort | ComplexArray
+"""A two-port, or the reflection of a one-port; planes of shape ``(..., f)``."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Network:
+    """Measured S-parameters.
+
+    Parameters
+    ----------
+    f_hz
+        Frequencies in Hz, shape ``(f,)``.
+    nominal
+        The measured values: planes of shape ``(f,)``.
+    varied
+        The same values under each variation of what is uncertain: planes of shape ``(v, f)``; None
+        where nothing is declared about uncertainty.
+    z0_ohm
+        Real reference impedance of both ports.
+    """
+
+    f_hz: FloatArray
+    nominal: Data
+    varied: Data | None = None
+    z0_ohm: float = 50.0
+
+    @property
+    def ports(self) -> int:
+        """1 or 2."""
+        return 2 if isinstance(self.nominal, TwoPort) else 1
+
+    @property
+    def matrix(self) -> ComplexArray:
+        """Nominal values as ``(f, n, n)``."""
+        if isinstance(self.nominal, TwoPort):
+            return self.nominal.matrix
+        return self.nominal[:, np.newaxis, np.newaxis]
+
+
+def combine(spread: FloatArray, systematic: int) -> FloatArray:
+    """Combine variations into one standard uncertainty.
+
+    Parameters
+    ----------
+    spread
+        Differences from the nominal value, shape ``(v, ...)``. The first ``systematic`` rows are
+        one-standard-uncertainty steps of independent influences, the rest are random draws of noise.
+    systematic
+        How many rows are steps.
+
+    Returns
+    -------
+    numpy.ndarray
+        Standard uncertainty, shape ``(...)``: root of the summed squares of the steps (GUM:1995, 5.1.2,
+        numerically after 5.1.3 note 2) and the mean square of the draws.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> float(combine(np.array([3.0, 4.0]), 2))
+    5.0
+    """
+    total = np.sum(spread[:systematic] ** 2, axis=0)
+    if len(spread) > systematic:
+        total = total + np.mean(spread[systematic:] ** 2, axis=0)
+    return np.asarray(np.sqrt(total), dtype=np.float64)
