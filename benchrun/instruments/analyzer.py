@@ -97,7 +97,9 @@ class NetworkAnalyzer:
             "start_hz": repr(float(settings.grid_hz[0])),
             "stop_hz": repr(float(settings.grid_hz[-1])),
             "points": len(settings.grid_hz),
-            "list_hz": ",".join(repr(x) for x in settings.grid_hz.tolist()) if settings.spacing == "list" else "",
+            "list_hz": ",".join(repr(x) for x in settings.grid_hz.tolist())
+            if settings.spacing == "list"
+            else "",
             "bandwidth_hz": f"{settings.bandwidth_hz:g}",
             "power_dbm": f"{settings.power_dbm:g}",
             "averages": settings.averages,
@@ -106,7 +108,12 @@ class NetworkAnalyzer:
         self.session.set(*(m.format(**values) for m in messages))
         points = self.session.query_float(words.points)
         if points != len(settings.grid_hz):
-            raise ReplyError(f"{points:g}", f"{len(settings.grid_hz)} points as set", resource=self.session.name, request=words.points)
+            raise ReplyError(
+                f"{points:g}",
+                f"{len(settings.grid_hz)} points as set",
+                resource=self.session.name,
+                request=words.points,
+            )
         self.session.set(*self.dialect.source_on)
         self._settings = settings
 

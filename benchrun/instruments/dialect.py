@@ -68,7 +68,9 @@ class ReadWords(FileModel):
     form: Form
     select: Words | None = None
     values: Words
-    order: Annotated[tuple[Literal["S11", "S21", "S12", "S22"], ...], Listed] = Field(min_length=4, max_length=4)
+    order: Annotated[tuple[Literal["S11", "S21", "S12", "S22"], ...], Listed] = Field(
+        min_length=4, max_length=4
+    )
     grid: Words | None = None
 
 
@@ -114,5 +116,10 @@ def load_dialect(name: str, folder: Path | None = None) -> Dialect:
     path = folder / f"{name}.yaml"
     if not path.is_file():
         known = ", ".join(sorted(p.stem for p in folder.glob("*.yaml")))
-        raise InputError(Problem(f"there is no dialect {name!r}", advice=f"Known are {known}; a new one is a file in that folder."))
+        raise InputError(
+            Problem(
+                f"there is no dialect {name!r}",
+                advice=f"Known are {known}; a new one is a file in that folder.",
+            )
+        )
     return load_model(read_bytes(path), str(path), Dialect, path).model

@@ -11,7 +11,12 @@ from benchrun.rf.twoport import FloatArray
 
 __all__ = ["BLOCK_FORMS", "decode", "read_block"]
 
-BLOCK_FORMS = {"REAL,64 NORMal": ">f8", "REAL,32 NORMal": ">f4", "REAL,64 SWAPped": "<f8", "REAL,32 SWAPped": "<f4"}
+BLOCK_FORMS = {
+    "REAL,64 NORMal": ">f8",
+    "REAL,32 NORMal": ">f4",
+    "REAL,64 SWAPped": "<f8",
+    "REAL,32 SWAPped": "<f4",
+}
 """numpy types by the standard's words (SCPI-1999 FORMat, BORDer)."""
 
 
@@ -47,7 +52,9 @@ def read_block(take: Callable[[int], bytes], rest: Callable[[], bytes], resource
         return rest().removesuffix(b"\n")
     length = take(digits)
     if not length.isdigit():
-        raise ReplyError((head + length).decode("latin-1"), "a block length", resource=resource, request=request)
+        raise ReplyError(
+            (head + length).decode("latin-1"), "a block length", resource=resource, request=request
+        )
     data = take(int(length) + 1)
     if data[-1:] != b"\n":
         raise FramingError(f"announced a block of {int(length)} bytes, but byte {int(length) + 1} is {data[-1:]!r} and not the "
@@ -76,11 +83,18 @@ def decode(payload: bytes, form: str, count: int | None, resource: str, request:
         try:
             values = np.array([float(x) for x in payload.decode("ascii").split(",")])
         except ValueError:
-            raise ReplyError(payload[:60].decode("latin-1"), "numbers joined by commas", resource=resource, request=request) from None
+            raise ReplyError(
+                payload[:60].decode("latin-1"), "numbers joined by commas", resource=resource, request=request
+            ) from None
     else:
         kind = np.dtype(BLOCK_FORMS[form])
         if len(payload) % kind.itemsize:
-            raise ReplyError(f"{len(payload)} bytes", f"a multiple of {kind.itemsize} bytes", resource=resource, request=request)
+            raise ReplyError(
+                f"{len(payload)} bytes",
+                f"a multiple of {kind.itemsize} bytes",
+                resource=resource,
+                request=request,
+            )
         values = np.frombuffer(payload, kind).astype(np.float64)
     if count is not None and len(values) != count:
         raise ReplyError(f"{len(values)} numbers", f"{count} numbers", resource=resource, request=request)

@@ -32,7 +32,9 @@ CODES: dict[int, type[TransportError]] = {
 """By VISA status; every other error status is a :class:`TransportError`."""
 
 
-def translate(error: Exception, resource: str, request: str, elapsed_s: float = 0.0, limit_s: float = 0.0) -> TransportError:
+def translate(
+    error: Exception, resource: str, request: str, elapsed_s: float = 0.0, limit_s: float = 0.0
+) -> TransportError:
     """What a lower error means here.
 
     Parameters
@@ -54,8 +56,12 @@ def translate(error: Exception, resource: str, request: str, elapsed_s: float = 
     else:
         kind, said = ConnectionLost, str(error)
     if kind is DeadlineExceeded:
-        message = f"gave no whole answer within {limit_s:.3g} s; check its power, its cable and whether it is busy"
-        return DeadlineExceeded(message, resource=resource, request=request, elapsed_s=elapsed_s, limit_s=limit_s)
+        message = (
+            f"gave no whole answer within {limit_s:.3g} s; check its power, its cable and whether it is busy"
+        )
+        return DeadlineExceeded(
+            message, resource=resource, request=request, elapsed_s=elapsed_s, limit_s=limit_s
+        )
     advice = {
         ResourceNotFound: "check the resource name in the bench file, the cable and the power",
         ConnectionLost: "check the cable and the power, then run again",

@@ -35,7 +35,9 @@ class Identity:
         """
         fields = [field.strip() for field in reply.split(",")]
         if len(fields) != 4 or not all(fields[:2]):
-            raise ReplyError(reply, "four fields: maker, model, serial, firmware", resource=resource, request="*IDN?")
+            raise ReplyError(
+                reply, "four fields: maker, model, serial, firmware", resource=resource, request="*IDN?"
+            )
         return cls(*fields)
 
     @property

@@ -37,7 +37,9 @@ def open_manager(library: Any) -> pyvisa.ResourceManager:
         ) from error
 
 
-def open_session(manager: pyvisa.ResourceManager, resource: str, clock: Clock, transcript: Transcript) -> Session:
+def open_session(
+    manager: pyvisa.ResourceManager, resource: str, clock: Clock, transcript: Transcript
+) -> Session:
     """Open one instrument.
 
     Raises
@@ -50,7 +52,9 @@ def open_session(manager: pyvisa.ResourceManager, resource: str, clock: Clock, t
     except (pyvisa.errors.VisaIOError, OSError, RuntimeError) as error:
         raise translate(error, resource, "open") from error
     except (pyvisa.errors.Error, ValueError, AttributeError, KeyError, TypeError) as error:
-        raise ResourceNotFound(f"cannot be opened: {error}; check the resource name in the bench file", resource=resource) from error
+        raise ResourceNotFound(
+            f"cannot be opened: {error}; check the resource name in the bench file", resource=resource
+        ) from error
     if not isinstance(line, pyvisa.resources.MessageBasedResource):
         line.close()
         raise ResourceNotFound("is no instrument that takes messages", resource=resource)

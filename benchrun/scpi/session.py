@@ -82,7 +82,9 @@ class Session:
         try:
             reply: str = data.decode("ascii").rstrip("\r\n")
         except UnicodeDecodeError:
-            raise ReplyError(data[:40].decode("latin-1"), "plain text", resource=self.name, request=message) from None
+            raise ReplyError(
+                data[:40].decode("latin-1"), "plain text", resource=self.name, request=message
+            ) from None
         self.transcript.note(self.clock.seconds(), self.name, "received", reply)
         self._check_late(message, start, limit)
         return reply
@@ -101,7 +103,9 @@ class Session:
         except ValueError:
             raise ReplyError(reply, "a number", resource=self.name, request=message) from None
 
-    def query_values(self, message: str, form: str, count: int | None = None, deadline_s: float | None = None) -> FloatArray:
+    def query_values(
+        self, message: str, form: str, count: int | None = None, deadline_s: float | None = None
+    ) -> FloatArray:
         """Ask for an array.
 
         Parameters
@@ -126,9 +130,13 @@ class Session:
         start = self.clock.seconds()
 
         def take(size: int) -> bytes:
-            data: bytes = self._read(message, start, limit, lambda: self._line.read_bytes(size, chunk_size=max(size, 1)))
+            data: bytes = self._read(
+                message, start, limit, lambda: self._line.read_bytes(size, chunk_size=max(size, 1))
+            )
             if len(data) != size:
-                raise FramingError(f"sent {len(data)} bytes where {size} were due", resource=self.name, request=message)
+                raise FramingError(
+                    f"sent {len(data)} bytes where {size} were due", resource=self.name, request=message
+                )
             return data
 
         def rest() -> bytes:
@@ -200,12 +208,18 @@ class Session:
             try:
                 code = int(number)
             except ValueError:
-                raise ReplyError(reply, 'an error number and text', resource=self.name, request="SYST:ERR?") from None
+                raise ReplyError(
+                    reply, "an error number and text", resource=self.name, request="SYST:ERR?"
+                ) from None
             if code == 0:
                 break
-            first = first or InstrumentError(code, text.strip().strip('"'), resource=self.name, request=request)
+            first = first or InstrumentError(
+                code, text.strip().strip('"'), resource=self.name, request=request
+            )
         else:
-            raise ReplyError(f"{_MAX_ERRORS} errors", "an error queue that ends", resource=self.name, request="SYST:ERR?")
+            raise ReplyError(
+                f"{_MAX_ERRORS} errors", "an error queue that ends", resource=self.name, request="SYST:ERR?"
+            )
         if first is not None:
             raise first
 
@@ -256,6 +270,10 @@ class Session:
     def _failed(self, error: Exception, message: str, elapsed: float, limit: float) -> Exception:
         found: Exception = translate(error, self.name, message, elapsed, limit)
         if isinstance(found, DeadlineExceeded) and is_dead(self._line):
-            found = ConnectionLost("closed the line; check its power and cable, then run again", resource=self.name, request=message)
+            found = ConnectionLost(
+                "closed the line; check its power and cable, then run again",
+                resource=self.name,
+                request=message,
+            )
         self.transcript.note(self.clock.seconds(), self.name, "failed", str(found))
         return found

@@ -95,5 +95,3 @@ class Bench(FileModel):
     def analyzer(self) -> Instrument:
         """The network analyzer."""
         return self.instruments["analyzer"]
-
-

@@ -60,8 +60,14 @@ def _names(loaded: Loaded[Sequence]) -> Iterator[Problem]:
             if (kind, name) in standing:
                 continue
             if (kind, name) in later:
-                where = "itself" if later[kind, name] == index else f"step {later[kind, name] + 1}, which comes later"
-                yield document.problem(f"`{key}: {name}` refers to {where}", (*path, key), "Put the step it needs before it.")
+                where = (
+                    "itself"
+                    if later[kind, name] == index
+                    else f"step {later[kind, name] + 1}, which comes later"
+                )
+                yield document.problem(
+                    f"`{key}: {name}` refers to {where}", (*path, key), "Put the step it needs before it."
+                )
             else:
                 known = ", ".join(n for k, n in standing if k == kind) or "none"
                 yield document.problem(f"`{key}: {name}` names no {kind} that stands before this step", (*path, key),
@@ -155,7 +161,9 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
                                                   f"{calibration.name} has one", (*path, "limits", i))  # type: ignore[union-attr]  # fmt: skip
 
 
-def check_kits(loaded: Loaded[Sequence], kits: Mapping[str, Loaded[KitFile]], today: datetime.date) -> list[Problem]:
+def check_kits(
+    loaded: Loaded[Sequence], kits: Mapping[str, Loaded[KitFile]], today: datetime.date
+) -> list[Problem]:
     """Kits reach over the sweep, hold the standards, and are not past their date."""
     problems = []
     for step, path in _paths(loaded):
@@ -169,7 +177,11 @@ def check_kits(loaded: Loaded[Sequence], kits: Mapping[str, Loaded[KitFile]], to
                 (*path, "kit"), "Use another kit or narrow the sweep."))  # fmt: skip
         lacking = [n for n in METHODS[step.method].standards if n not in kit.standards]
         if lacking:
-            problems.append(loaded.document.problem(f"kit {kit.kit} lacks {', '.join(lacking)} for {step.method}", (*path, "kit")))
+            problems.append(
+                loaded.document.problem(
+                    f"kit {kit.kit} lacks {', '.join(lacking)} for {step.method}", (*path, "kit")
+                )
+            )
         if kit.due and kit.due < today:
             problems.append(loaded.document.problem(f"kit {kit.kit} was due for calibration on {kit.due}", (*path, "kit"),
                                                     "Have it calibrated, or use another kit."))  # fmt: skip
@@ -209,10 +221,19 @@ def check_bench(loaded: Loaded[Sequence], bench: Bench) -> list[Problem]:
                 add(f"sweep {name} covers {_span(grid[0], grid[-1])}, but the analyzer of {bench.bench} only {_span(low, high)}",
                     "to" if grid[-1] > high else "from")  # fmt: skip
             if len(grid) > analyzer.range.points:
-                add(f"sweep {name} has {len(grid)} points, the analyzer of {bench.bench} at most {analyzer.range.points}", "points")
+                add(
+                    f"sweep {name} has {len(grid)} points, the analyzer of {bench.bench} at most {analyzer.range.points}",
+                    "points",
+                )
             if analyzer.range.power and not analyzer.range.power[0] <= sweep.power <= analyzer.range.power[1]:
-                add(f"{sweep.power:g} dBm is outside the analyzer's {analyzer.range.power[0]:g} to {analyzer.range.power[1]:g} dBm", "power")
-            if analyzer.range.bandwidth and not analyzer.range.bandwidth[0] <= sweep.bandwidth <= analyzer.range.bandwidth[1]:
+                add(
+                    f"{sweep.power:g} dBm is outside the analyzer's {analyzer.range.power[0]:g} to {analyzer.range.power[1]:g} dBm",
+                    "power",
+                )
+            if (
+                analyzer.range.bandwidth
+                and not analyzer.range.bandwidth[0] <= sweep.bandwidth <= analyzer.range.bandwidth[1]
+            ):
                 add(f"{render(sweep.bandwidth, Dimension.FREQUENCY)} is outside the analyzer's IF bandwidths "
                     f"{_span(*analyzer.range.bandwidth)}", "bandwidth")  # fmt: skip
         if sweep.power > sequence.unit.withstands.power:

@@ -19,7 +19,9 @@ __all__ = [
 class FileModel(BaseModel):
     """Strict, frozen, and closed: what is not known is refused."""
 
-    model_config = ConfigDict(strict=True, frozen=True, extra="forbid", allow_inf_nan=False, populate_by_name=False)
+    model_config = ConfigDict(
+        strict=True, frozen=True, extra="forbid", allow_inf_nan=False, populate_by_name=False
+    )
 
 
 def _schema(dimension: Dimension, ranged: bool = False) -> WithJsonSchema:
@@ -62,7 +64,9 @@ Impedance = Annotated[float, Field(gt=0), _value(Dimension.IMPEDANCE), _schema(D
 Capacitance = Annotated[float, _value(Dimension.CAPACITANCE), _schema(Dimension.CAPACITANCE)]
 Inductance = Annotated[float, _value(Dimension.INDUCTANCE), _schema(Dimension.INDUCTANCE)]
 LossRate = Annotated[float, Field(ge=0), _value(Dimension.LOSS_RATE), _schema(Dimension.LOSS_RATE)]
-Name = Annotated[str, Field(pattern=r"^[a-z0-9][a-z0-9-]{0,62}$", description="lower-case letters, digits, hyphens")]
+Name = Annotated[
+    str, Field(pattern=r"^[a-z0-9][a-z0-9-]{0,62}$", description="lower-case letters, digits, hyphens")
+]
 
 
 def _as_tuple(value: object) -> object:

@@ -87,7 +87,11 @@ def kind_of(document: Document) -> str:
         for kind in KINDS:
             if kind in document.data:
                 return kind
-    raise InputError(document.problem(f"is no {', '.join(KINDS)} file", (), f"It must begin with one of the keys {', '.join(KINDS)}."))
+    raise InputError(
+        document.problem(
+            f"is no {', '.join(KINDS)} file", (), f"It must begin with one of the keys {', '.join(KINDS)}."
+        )
+    )
 
 
 def validate(document: Document, model: type[M]) -> M:
@@ -140,12 +144,16 @@ def _problem(document: Document, detail: ErrorDetails, path: tuple[object, ...])
     if kind == "value_error":
         return document.problem(str(context["error"]), path)
     if kind == "literal_error" and isinstance(value, str):
-        close = difflib.get_close_matches(value, re.findall(r"'([^']+)'", str(context.get("expected"))), 1, 0.5)
+        close = difflib.get_close_matches(
+            value, re.findall(r"'([^']+)'", str(context.get("expected"))), 1, 0.5
+        )
         if close:
             return document.problem(f"{key}: {value!r} is not known", path, f"Did you mean {close[0]!r}?")
     said = detail["msg"]
     said = said[0].lower() + said[1:]
-    return document.problem(f"{path[-1] if path else key!s}: {_short(value)} is not allowed here: {said}", path)
+    return document.problem(
+        f"{path[-1] if path else key!s}: {_short(value)} is not allowed here: {said}", path
+    )
 
 
 def _extra(document: Document, path: tuple[object, ...], key: str) -> Problem:

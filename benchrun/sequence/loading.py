@@ -106,7 +106,9 @@ def load(raw: bytes, name: str) -> Document:
         raise InputError(Problem(f"is {len(raw):,} bytes long, at most {MAX_BYTES:,} are allowed", name))
     text = _text(raw, name)
     try:
-        data, places = _Builder(name).build(yaml.parse(text, Loader=getattr(yaml, "CSafeLoader", yaml.SafeLoader)))
+        data, places = _Builder(name).build(
+            yaml.parse(text, Loader=getattr(yaml, "CSafeLoader", yaml.SafeLoader))
+        )
     except yaml.MarkedYAMLError as error:
         mark = error.problem_mark or error.context_mark
         line, column = (mark.line + 1, mark.column + 1) if mark else (1, 1)
@@ -115,7 +117,9 @@ def load(raw: bytes, name: str) -> Document:
     except yaml.YAMLError as error:
         raise InputError(Problem(f"is not YAML: {error}", name, 1, 1)) from None
     if data is None:
-        raise InputError(Problem("is empty", name, 1, 1, "A file begins with its kind, such as `sequence: NAME`."))
+        raise InputError(
+            Problem("is empty", name, 1, 1, "A file begins with its kind, such as `sequence: NAME`.")
+        )
     return Document(data, places, name, raw)
 
 
@@ -126,7 +130,9 @@ def _text(raw: bytes, name: str) -> str:
         before = raw[: error.start]
         line, column = before.count(b"\n") + 1, error.start - before.rfind(b"\n")
         raise InputError(
-            Problem(f"is not UTF-8 text (byte 0x{raw[error.start]:02X})", name, line, column, "Save it as UTF-8.")
+            Problem(
+                f"is not UTF-8 text (byte 0x{raw[error.start]:02X})", name, line, column, "Save it as UTF-8."
+            )
         ) from None
     for match in re.finditer(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\t]", text):
         line = text.count("\n", 0, match.start()) + 1
@@ -135,7 +141,9 @@ def _text(raw: bytes, name: str) -> str:
         if tab and text[text.rfind("\n", 0, match.start()) + 1 : match.start()].strip():
             continue  # a tab after content is only ugly
         what = "a tab in the indentation" if tab else f"the control character 0x{ord(match[0]):02X}"
-        raise InputError(Problem(f"has {what}", name, line, column, "Indent with spaces." if tab else "Remove it."))
+        raise InputError(
+            Problem(f"has {what}", name, line, column, "Indent with spaces." if tab else "Remove it.")
+        )
     return text
 
 
@@ -196,7 +204,9 @@ class _Builder:
                 raise self.fail(f"uses {value!r} as a key", event, "Keys are words or port numbers.")
             if value in container:
                 line, column = self.places[(*path, value), "key"]
-                raise self.fail(f"says {value!r} twice; the first is at {line}:{column}", event, "Keep one of them.")
+                raise self.fail(
+                    f"says {value!r} twice; the first is at {line}:{column}", event, "Keep one of them."
+                )
             keys[-1] = value
             container[value] = None
             self.places[(*path, value), "key"] = place

@@ -55,7 +55,9 @@ class MaskFile(FileModel):
     def build(self) -> Mask:
         """As numbers."""
         lines = [
-            MaskLine(x.side, np.array([c[0] for c in x.through]), np.array([c[1] for c in x.through]), x.spacing)
+            MaskLine(
+                x.side, np.array([c[0] for c in x.through]), np.array([c[1] for c in x.through]), x.spacing
+            )
             for x in self.lines
         ]
         return Mask(self.mask, tuple(lines))

@@ -62,7 +62,9 @@ class Unit(FileModel):
     """The part under test."""
 
     part: str = Field(min_length=1, max_length=80)
-    serial: Annotated[str, BeforeValidator(_pattern)] = Field(description="regular expression of a whole serial number")
+    serial: Annotated[str, BeforeValidator(_pattern)] = Field(
+        description="regular expression of a whole serial number"
+    )
     ports: Literal[1, 2] = 2
     withstands: Withstands
     gain: Decibel = Field(default=0.0, description="the unit's greatest gain")
@@ -74,7 +76,9 @@ class SweepSetup(FileModel):
 
     from_: Frequency | None = Field(default=None, alias="from")
     to: Frequency | None = None
-    at: Annotated[tuple[Frequency, ...], Listed] | None = Field(default=None, min_length=2, max_length=100_001)
+    at: Annotated[tuple[Frequency, ...], Listed] | None = Field(
+        default=None, min_length=2, max_length=100_001
+    )
     points: int | None = Field(default=None, ge=2, le=100_001)
     spacing: Literal["linear", "log"] = "linear"
     bandwidth: Frequency = Field(gt=0, description="IF bandwidth")
@@ -103,7 +107,9 @@ class SweepSetup(FileModel):
         """Frequencies in Hz, ``(f,)``."""
         if self.at is not None:
             return np.asarray(self.at, dtype=np.float64)
-        assert self.from_ is not None and self.to is not None and self.points is not None  # checked on reading
+        assert (
+            self.from_ is not None and self.to is not None and self.points is not None
+        )  # checked on reading
         space = np.geomspace if self.spacing == "log" else np.linspace
         return np.asarray(space(self.from_, self.to, self.points), dtype=np.float64)
 

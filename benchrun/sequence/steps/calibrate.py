@@ -23,7 +23,9 @@ class Calibrate(StepModel):
     method: Literal["SOLT", "SOL"] = Field(description="SOLT: two ports; SOL: one port")
     kit: str = Field(description="name or file of the calibration kit", min_length=1)
     keep: Duration | None = Field(default=None, description="how long the calibration may serve")
-    ports: Annotated[tuple[Literal[1, 2], ...], Listed] = Field(default=(), max_length=2, description="[1], [2] or [1, 2]")
+    ports: Annotated[tuple[Literal[1, 2], ...], Listed] = Field(
+        default=(), max_length=2, description="[1], [2] or [1, 2]"
+    )
     isolation: bool = Field(default=False, description="read isolation with a load on each port (SOLT)")
 
     @property

@@ -25,8 +25,12 @@ class DeEmbed(StepModel):
 
     name: Name = Field(alias="as", description="name under which later steps refer to this result")
     from_: Name = Field(alias="from", description="the result to take the fixture out of")
-    left: str | None = Field(default=None, description="Touchstone file of the half on port 1; its port 2 meets the unit")
-    right: str | None = Field(default=None, description="Touchstone file of the half on port 2; its port 1 meets the unit")
+    left: str | None = Field(
+        default=None, description="Touchstone file of the half on port 1; its port 2 meets the unit"
+    )
+    right: str | None = Field(
+        default=None, description="Touchstone file of the half on port 2; its port 1 meets the unit"
+    )
 
     @model_validator(mode="after")
     def _some(self) -> DeEmbed:

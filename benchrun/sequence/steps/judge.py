@@ -26,16 +26,23 @@ def _rule(value: object) -> Rule:
         if kind in ("guard band", "non-binary") and match:
             factor = float(match[1])
             if abs(factor) > 10 or (kind == "non-binary" and factor < 0):
-                raise ValueError(f"{width!r} is no sensible guard band; write it as in \"1 U\"")
+                raise ValueError(f'{width!r} is no sensible guard band; write it as in "1 U"')
             return Rule(str(kind), factor)
-    raise ValueError(f'{value!r} is no decision rule; write `simple`, `{{guard band: 1 U}}` or `{{non-binary: 1 U}}`')
+    raise ValueError(
+        f"{value!r} is no decision rule; write `simple`, `{{guard band: 1 U}}` or `{{non-binary: 1 U}}`"
+    )
 
 
 def _rule_schema() -> WithJsonSchema:
     width = {"type": "string", "pattern": "^[-+]?[0-9]*\\.?[0-9]+ ?U$", "examples": ["1 U"]}
 
     def one(key: str) -> dict[str, Any]:
-        return {"type": "object", "properties": {key: width}, "required": [key], "additionalProperties": False}
+        return {
+            "type": "object",
+            "properties": {key: width},
+            "required": [key],
+            "additionalProperties": False,
+        }
 
     return WithJsonSchema({"oneOf": [{"const": "simple"}, one("guard band"), one("non-binary")]})
 
@@ -67,7 +74,9 @@ class FigureLimit(FileModel):
     name: str | None = Field(default=None, description="how people call this limit", max_length=60)
     over: FrequencyRange | None = Field(default=None, description="the band")
     at: Frequency | None = Field(default=None, description="one frequency instead of a band")
-    against: FrequencyRange | None = Field(default=None, description="the band that rejection is counted from")
+    against: FrequencyRange | None = Field(
+        default=None, description="the band that rejection is counted from"
+    )
     drop: Decibel | None = Field(default=None, description="how far below the peak")
     edge: Literal["upper", "lower"] | None = None
     port: Literal[1, 2] | None = None

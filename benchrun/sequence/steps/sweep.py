@@ -20,12 +20,16 @@ class Sweep(StepModel):
 
     name: Name = Field(alias="as", description="name under which later steps refer to this result")
     with_: Name | None = Field(default=None, alias="with", description="a calibration; its sweep is used")
-    sweep: Name | None = Field(default=None, description="one of the sequence's sweeps, to read without correction")
+    sweep: Name | None = Field(
+        default=None, description="one of the sequence's sweeps, to read without correction"
+    )
 
     @model_validator(mode="after")
     def _one_of(self) -> Sweep:
         if (self.with_ is None) == (self.sweep is None):
-            raise trouble("says `with` (a calibration) and `sweep` (an uncorrected sweep) both or not at all; say one")
+            raise trouble(
+                "says `with` (a calibration) and `sweep` (an uncorrected sweep) both or not at all; say one"
+            )
         return self
 
     def needs(self) -> dict[str, tuple[str, str]]:
