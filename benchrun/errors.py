@@ -114,9 +114,7 @@ class InputError(BenchError, ValueError):
     def __init__(self, problems: str | Problem | Iterable[Problem]) -> None:
         if isinstance(problems, str):
             problems = Problem(problems)
-        self.problems: tuple[Problem, ...] = (
-            (problems,) if isinstance(problems, Problem) else tuple(problems)
-        )
+        self.problems: tuple[Problem, ...] = (problems,) if isinstance(problems, Problem) else tuple(problems)
         super().__init__("\n".join(str(p) for p in self.problems))
 
     def __reduce__(self) -> tuple[type[InputError], tuple[tuple[Problem, ...]]]:
@@ -169,7 +167,13 @@ class DeadlineExceeded(TransportError):
     """
 
     def __init__(
-        self, message: str, *, resource: str = "", request: str = "", elapsed_s: float = 0.0, limit_s: float = 0.0
+        self,
+        message: str,
+        *,
+        resource: str = "",
+        request: str = "",
+        elapsed_s: float = 0.0,
+        limit_s: float = 0.0,
     ) -> None:
         super().__init__(message, resource=resource, request=request)
         self.elapsed_s = elapsed_s

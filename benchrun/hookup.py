@@ -35,7 +35,9 @@ class Connection:
 
     def __post_init__(self) -> None:
         if not self.items or len(self.ports) not in (1, 2):
-            raise ValueError(f"a connection needs items and one or two ports, got {self.items} on {self.ports}")
+            raise ValueError(
+                f"a connection needs items and one or two ports, got {self.items} on {self.ports}"
+            )
 
     @property
     def text(self) -> str:

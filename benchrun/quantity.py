@@ -96,14 +96,18 @@ def parse(text: str, dimension: Dimension) -> float:
     """
     wanted = f'write it as in "{dimension.example}"'
     if not isinstance(text, str):
-        raise QuantityError(f"{text!r} has no unit; {wanted}" if dimension.unit else f"{text!r} is no text; {wanted}")
+        raise QuantityError(
+            f"{text!r} has no unit; {wanted}" if dimension.unit else f"{text!r} is no text; {wanted}"
+        )
     match = _TEXT.fullmatch(text.strip())
     if match is None:
         raise QuantityError(f"{text!r} is not a value with a unit; {wanted}")
     number, unit = float(match[1]), (match[2] or "").strip()
     factor = _factor(text, unit, dimension, wanted)
     # The decimal text is scaled by the prefix as text, so that "0.3 pF" is exactly 0.3e-12.
-    value = float(f"{match[1]}e{round(math.log10(factor))}") if _is_decade(match[1], factor) else number * factor
+    value = (
+        float(f"{match[1]}e{round(math.log10(factor))}") if _is_decade(match[1], factor) else number * factor
+    )
     if not math.isfinite(value):
         raise QuantityError(f"{text!r} is too large to be a value; {wanted}")
     if dimension is Dimension.FREQUENCY and 0 < abs(value) < 1.0 and unit.startswith("m"):
@@ -150,7 +154,9 @@ def parse_range(text: str, dimension: Dimension) -> tuple[float, float]:
     """
     parts = re.split(r"\s+to\s+", text.strip()) if isinstance(text, str) else []
     if len(parts) != 2:
-        raise QuantityError(f'{text!r} is not a range; write it as "{dimension.example} to ..." with both units')
+        raise QuantityError(
+            f'{text!r} is not a range; write it as "{dimension.example} to ..." with both units'
+        )
     low, high = (parse(part, dimension) for part in parts)
     if not low < high:
         raise QuantityError(f"{text!r} does not increase; write the lower value first")

@@ -37,7 +37,9 @@ class Offset:
     loss_ohm_per_s: float = 0.0
     z0_ohm: float = 50.0
 
-    def line(self, f_hz: FloatArray, delay_s: float | FloatArray | None = None) -> tuple[ComplexArray, ComplexArray]:
+    def line(
+        self, f_hz: FloatArray, delay_s: float | FloatArray | None = None
+    ) -> tuple[ComplexArray, ComplexArray]:
         r"""Propagation and impedance at each frequency.
 
         With :math:`\alpha l = \frac{loss\,\tau}{2 Z_o}\sqrt{f/1\,\mathrm{GHz}}`,
@@ -139,7 +141,9 @@ class Standard:
             y = 1j * w * c * zr
             return np.asarray((1.0 - y) / (1.0 + y))
         if self.kind == "short":
-            inductance = np.polynomial.polynomial.polyval(f_hz, self.inductance) + np.asarray(d.get("l0_h", 0.0))
+            inductance = np.polynomial.polynomial.polyval(f_hz, self.inductance) + np.asarray(
+                d.get("l0_h", 0.0)
+            )
             z = 1j * w * inductance / zr
         elif self.kind == "load":
             r = self.resistance_ohm + np.asarray(d.get("resistance_ohm", 0.0))

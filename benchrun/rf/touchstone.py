@@ -108,7 +108,9 @@ class _Reader:
                     if len(pending) == 5 * (len(pending) // 5) and self.ports == 2:
                         return self.finish(number)  # noise data begins where frequency falls back
                     raise self.fail(
-                        f"frequency {pending[0]:g} does not increase", number, advice="Frequencies must be in rising order."
+                        f"frequency {pending[0]:g} does not increase",
+                        number,
+                        advice="Frequencies must be in rising order.",
                     )
                 if len(pending) > width:
                     raise self.fail(f"has {len(pending)} numbers where {width} make one frequency", number)
@@ -118,7 +120,9 @@ class _Reader:
                 return self.finish(number)
         if pending:
             raise self.fail(
-                f"ends in the middle of a frequency: {len(pending)} of {width} numbers", number, advice="The file is cut off."
+                f"ends in the middle of a frequency: {len(pending)} of {width} numbers",
+                number,
+                advice="The file is cut off.",
             )
         return self.finish(number)
 
@@ -134,7 +138,9 @@ class _Reader:
             elif word == "r" and words:
                 self.z0 = self.number(words.pop(0), line, content.lower().find(" r ") + 3)
             elif word in ("y", "z", "h", "g"):
-                raise self.fail(f"holds {word.upper()}-parameters", line, advice="Convert it to S-parameters first.")
+                raise self.fail(
+                    f"holds {word.upper()}-parameters", line, advice="Convert it to S-parameters first."
+                )
             elif word != "s":
                 raise self.fail(f"{word!r} means nothing in an option line", line)
 
@@ -142,9 +148,13 @@ class _Reader:
         try:
             value = float(text)
         except ValueError:
-            raise self.fail(f"{text[:30]!r} is not a number", line, column, "Is this a Touchstone file?") from None
+            raise self.fail(
+                f"{text[:30]!r} is not a number", line, column, "Is this a Touchstone file?"
+            ) from None
         if not np.isfinite(value):
-            raise self.fail(f"{text!r} is not a finite number", line, column, "The reading failed there; read it again.")
+            raise self.fail(
+                f"{text!r} is not a finite number", line, column, "The reading failed there; read it again."
+            )
         return value
 
     def finish(self, line: int) -> TouchstoneData:
@@ -170,7 +180,9 @@ def _read_version_2(text: str, name: str) -> TouchstoneData:
     import skrf
 
     if re.search(r"^\s*\[mixed-mode order\]", text, re.I | re.M):
-        raise InputError(Problem("holds mixed-mode parameters", name, advice="Convert it to single-ended two-port data."))
+        raise InputError(
+            Problem("holds mixed-mode parameters", name, advice="Convert it to single-ended two-port data.")
+        )
     if not re.search(r"^\s*\[network data\]", text, re.I | re.M):
         raise InputError(Problem("has no [Network Data]", name, advice="The file is cut off."))
     stream = io.StringIO(text)
@@ -179,7 +191,9 @@ def _read_version_2(text: str, name: str) -> TouchstoneData:
         network = skrf.Network()
         network.read_touchstone(stream)
     except Exception as error:  # scikit-rf has no error class of its own
-        raise InputError(Problem(f"cannot be read as Touchstone 2: {type(error).__name__} {error}", name)) from error
+        raise InputError(
+            Problem(f"cannot be read as Touchstone 2: {type(error).__name__} {error}", name)
+        ) from error
     z0 = np.unique(network.z0)
     if network.nports > 2 or len(z0) > 1:
         raise InputError(Problem(f"has {network.nports} ports at {np.array2string(z0.real)} ohm", name,
@@ -187,7 +201,9 @@ def _read_version_2(text: str, name: str) -> TouchstoneData:
     return TouchstoneData(network.f.astype(np.float64), network.s.astype(np.complex128), float(z0[0].real))
 
 
-def write(f_hz: FloatArray, network: TwoPort | ComplexArray, comment: str = "", z0_ohm: float = 50.0) -> bytes:
+def write(
+    f_hz: FloatArray, network: TwoPort | ComplexArray, comment: str = "", z0_ohm: float = 50.0
+) -> bytes:
     """Write version 1 text: Hz, S, real and imaginary, shortest digits that read back the same.
 
     Parameters
@@ -212,9 +228,13 @@ def write(f_hz: FloatArray, network: TwoPort | ComplexArray, comment: str = "", 
     1000000000.0 0.5 0.25
     <BLANKLINE>
     """
-    planes = (network.s11, network.s21, network.s12, network.s22) if isinstance(network, TwoPort) else (network,)
+    planes = (
+        (network.s11, network.s21, network.s12, network.s22) if isinstance(network, TwoPort) else (network,)
+    )
     columns = [f_hz.tolist()]
     for plane in planes:
         columns += [plane.real.tolist(), plane.imag.tolist()]
     head = "".join(f"! {line}\n" for line in comment.splitlines()) + f"# Hz S RI R {float(z0_ohm)!r}\n"
-    return (head + "\n".join([" ".join(map(repr, row)) for row in zip(*columns, strict=True)]) + "\n").encode()
+    return (
+        head + "\n".join([" ".join(map(repr, row)) for row in zip(*columns, strict=True)]) + "\n"
+    ).encode()

@@ -38,7 +38,14 @@ class Conclusion(StrEnum):
     @property
     def exit_code(self) -> int:
         """Exit code of a run with this conclusion."""
-        return {"pass": 0, "conditional pass": 0, "conditional fail": 1, "fail": 1, "invalid": 3, "stopped": 4}[self]
+        return {
+            "pass": 0,
+            "conditional pass": 0,
+            "conditional fail": 1,
+            "fail": 1,
+            "invalid": 3,
+            "stopped": 4,
+        }[self]
 
 
 def worst(conclusions: Iterable[Conclusion]) -> Conclusion:

@@ -83,7 +83,9 @@ class ResidualTerms:
             elif name in DECIBEL_RIPPLE:
                 values[name.replace(" ", "_")] = 10.0 ** (abs(level) / 20.0) - 1.0
             else:
-                raise QuantityError(f"{name!r} is no residual term; known are {', '.join(DECIBEL_LOSS + DECIBEL_RIPPLE)}")
+                raise QuantityError(
+                    f"{name!r} is no residual term; known are {', '.join(DECIBEL_LOSS + DECIBEL_RIPPLE)}"
+                )
         return cls(**values)
 
     @property
@@ -152,7 +154,12 @@ class ResidualTerms:
     @property
     def names(self) -> tuple[str, ...]:
         """What each row of :meth:`vary` steps, for two ports, before the noise rows."""
-        return tuple(f"{term}, {way}, {axis}" for way in ("forward", "reverse") for term in _TERMS for axis in ("re", "im"))
+        return tuple(
+            f"{term}, {way}, {axis}"
+            for way in ("forward", "reverse")
+            for term in _TERMS
+            for axis in ("re", "im")
+        )
 
     @property
     def steps(self) -> int:
@@ -212,4 +219,12 @@ class ResidualTerms:
         return np.concatenate([np.stack(rows), noisy])
 
 
-_TERMS = ("directivity", "source match", "tracking", "load match", "transmission", "isolation", "repeatability")
+_TERMS = (
+    "directivity",
+    "source match",
+    "tracking",
+    "load match",
+    "transmission",
+    "isolation",
+    "repeatability",
+)

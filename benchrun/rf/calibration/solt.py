@@ -20,7 +20,11 @@ _LOADS = Hookup((Connection(("load",), (1,)), Connection(("load",), (2,))))
 
 
 def _far_terms(
-    near: OnePortTerms, reflection: ComplexArray, transmission: ComplexArray, thru: TwoPort, leak: ComplexArray | complex
+    near: OnePortTerms,
+    reflection: ComplexArray,
+    transmission: ComplexArray,
+    thru: TwoPort,
+    leak: ComplexArray | complex,
 ) -> tuple[ComplexArray, ComplexArray]:
     """Load match and transmission tracking of one direction, from the thru seen from the driven port.
 
@@ -52,7 +56,9 @@ class ShortOpenLoadThru:
         """Twelve terms, in closed form."""
         truths = [np.asarray(definitions[n]) for n in REFLECTIONS]
         near = [
-            solve_three(truths, [own_reflection(readings[Hookup.of(n, p).text], p) for n in REFLECTIONS], f"port {p}")
+            solve_three(
+                truths, [own_reflection(readings[Hookup.of(n, p).text], p) for n in REFLECTIONS], f"port {p}"
+            )
             for p in ports
         ]
         thru, read = cast(TwoPort, definitions["thru"]), readings[Hookup.of("thru", *ports).text]

@@ -9,4 +9,6 @@ from benchrun.rf.figures.kind import FigureKind, Found, Parameter
 
 __all__ = ["FIGURES", "FigureKind", "Found", "Parameter"]
 
-FIGURES: Mapping[str, FigureKind] = {kind.name: kind for kind in (*level.KINDS, *crossing.KINDS, *phase.KINDS)}
+FIGURES: Mapping[str, FigureKind] = {
+    kind.name: kind for kind in (*level.KINDS, *crossing.KINDS, *phase.KINDS)
+}

@@ -27,7 +27,9 @@ def require_inside(f_hz: FloatArray, low_hz: float, high_hz: float, figure: str)
         Naming the band and the sweep.
     """
     if low_hz < f_hz[0] * (1 - 1e-12) or high_hz > f_hz[-1] * (1 + 1e-12):
-        low, high, first, last = (render(float(x), Dimension.FREQUENCY) for x in (low_hz, high_hz, f_hz[0], f_hz[-1]))
+        low, high, first, last = (
+            render(float(x), Dimension.FREQUENCY) for x in (low_hz, high_hz, f_hz[0], f_hz[-1])
+        )
         raise InvalidMeasurement(
             f"{figure} is asked from {low} to {high}, but the sweep covers only {first} to {last}.",
             "Widen the sweep or narrow the band in the sequence.",
@@ -58,7 +60,9 @@ def at(f_hz: FloatArray, values: FloatArray, where_hz: FloatArray | float) -> Fl
     return np.asarray(values[..., right - 1] * (1.0 - weight) + values[..., right] * weight)
 
 
-def in_band(f_hz: FloatArray, values: FloatArray, low_hz: float, high_hz: float) -> tuple[FloatArray, FloatArray]:
+def in_band(
+    f_hz: FloatArray, values: FloatArray, low_hz: float, high_hz: float
+) -> tuple[FloatArray, FloatArray]:
     """The samples inside a band, and both edges by interpolation.
 
     So a figure does not depend on whether a grid point happens to lie on the edge.

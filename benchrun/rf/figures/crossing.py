@@ -72,7 +72,11 @@ KINDS = (
         "corner frequency",
         Dimension.FREQUENCY,
         "where |S21| has first fallen by `drop` from its peak, on the `edge` side of the peak",
-        {"drop": _DROP, "edge": Parameter("choice", default="upper", choices=("upper", "lower")), "trace": _TRACE},
+        {
+            "drop": _DROP,
+            "edge": Parameter("choice", default="upper", choices=("upper", "lower")),
+            "trace": _TRACE,
+        },
         scalar=lambda f_hz, network, drop, edge, trace: _corner(f_hz, network, drop, edge, trace),
     ),
     FigureKind(

@@ -104,7 +104,9 @@ class FigureKind:
         reach = parameters.get(self.reach_hz, 0.0) / 2.0 if self.reach_hz else 0.0
         return low - reach, high + reach
 
-    def measure(self, f_hz: FloatArray, network: TwoPort | ComplexArray, side: str, **parameters: Any) -> Found:
+    def measure(
+        self, f_hz: FloatArray, network: TwoPort | ComplexArray, side: str, **parameters: Any
+    ) -> Found:
         """Take the figure.
 
         Parameters

@@ -73,7 +73,11 @@ def _reciprocity(f_hz: FloatArray, network: TwoPort) -> FloatArray:
 
 def _level(name: str, meaning: str, trace: object, **extra: Parameter) -> FigureKind:
     return FigureKind(
-        name, Dimension.RATIO, meaning, {"over": _OVER, "at": _AT, "trace": _TRACE, **extra}, trace=trace  # type: ignore[arg-type]
+        name,
+        Dimension.RATIO,
+        meaning,
+        {"over": _OVER, "at": _AT, "trace": _TRACE, **extra},
+        trace=trace,  # type: ignore[arg-type]
     )
 
 
@@ -91,9 +95,19 @@ KINDS = (
         _rejection,
         against=Parameter("range", Dimension.FREQUENCY, optional=True),
     ),
-    _port("return loss", Dimension.RATIO, "-20 log10 |S11| (port 2: |S22|) at every sample of the band", _return_loss),
+    _port(
+        "return loss",
+        Dimension.RATIO,
+        "-20 log10 |S11| (port 2: |S22|) at every sample of the band",
+        _return_loss,
+    ),
     _port("VSWR", Dimension.NUMBER, "(1 + |S11|) / (1 - |S11|) at every sample of the band", _vswr),
-    _port("mismatch loss", Dimension.RATIO, "-10 log10 (1 - |S11|^2) at every sample of the band", _mismatch_loss),
+    _port(
+        "mismatch loss",
+        Dimension.RATIO,
+        "-10 log10 (1 - |S11|^2) at every sample of the band",
+        _mismatch_loss,
+    ),
     FigureKind(
         "ripple",
         Dimension.RATIO,
