@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from typing import ClassVar, Protocol, TypeAlias
 
 from benchrun.hookup import Hookup
@@ -10,13 +10,16 @@ from benchrun.rf.kit import Kit
 from benchrun.rf.terms import OnePortTerms, TwelveTerms
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
-__all__ = ["Definitions", "Method", "Readings", "Terms"]
+__all__ = ["Definitions", "Examiner", "Method", "Readings", "Terms"]
 
 Terms: TypeAlias = TwelveTerms | OnePortTerms
 Readings: TypeAlias = Mapping[str, TwoPort]
 """Raw two-port readings by the text of their hook-up; planes ``(..., f)``."""
 Definitions: TypeAlias = Mapping[str, ComplexArray | TwoPort]
 """What each standard is taken to be, by its name in the kit."""
+
+Examiner: TypeAlias = Callable[[TwoPort], TwoPort | ComplexArray]
+"""Corrects one raw reading by other people's code."""
 
 
 class Method(Protocol):
@@ -43,14 +46,13 @@ class Method(Protocol):
         """
         ...
 
-    def examine(
+    def examiner(
         self,
         f_hz: FloatArray,
         ports: tuple[int, ...],
         kit: Kit,
         readings: Readings,
-        raw: TwoPort,
         isolation: bool = False,
-    ) -> TwoPort | ComplexArray:
-        """The same calibration and correction of ``raw`` by scikit-rf, for comparison."""
+    ) -> Examiner:
+        """The same calibration by scikit-rf, ready to correct raw readings for comparison."""
         ...

@@ -9,7 +9,7 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.hookup import Hookup
-from benchrun.rf.calibration.method import Definitions, Readings
+from benchrun.rf.calibration.method import Definitions, Examiner, Readings
 from benchrun.rf.kit import Kit
 from benchrun.rf.terms import OnePortTerms
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
@@ -77,15 +77,14 @@ class ShortOpenLoad:
         measured = [own_reflection(readings[Hookup.of(n, port).text], port) for n in REFLECTIONS]
         return solve_three([np.asarray(definitions[n]) for n in REFLECTIONS], measured, f"port {port}")
 
-    def examine(
+    def examiner(
         self,
         f_hz: FloatArray,
         ports: tuple[int, ...],
         kit: Kit,
         readings: Readings,
-        raw: TwoPort,
         isolation: bool = False,
-    ) -> ComplexArray:
+    ) -> Examiner:
         """By scikit-rf's ``OnePort``."""
         import skrf
         from skrf.calibration import OnePort
@@ -98,5 +97,9 @@ class ShortOpenLoad:
         ideals = [network(kit.standards[n].reflection(f_hz, kit.z0_ohm)) for n in REFLECTIONS]
         measured = [network(own_reflection(readings[Hookup.of(n, port).text], port)) for n in REFLECTIONS]
         calibration = OnePort(measured=measured, ideals=ideals)
-        corrected = calibration.apply_cal(network(own_reflection(raw, port)))
-        return np.asarray(corrected.s[:, 0, 0], dtype=np.complex128)
+
+        def correct(raw: TwoPort) -> ComplexArray:
+            corrected = calibration.apply_cal(network(own_reflection(raw, port)))
+            return np.asarray(corrected.s[:, 0, 0], dtype=np.complex128)
+
+        return correct

@@ -8,7 +8,7 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.hookup import Connection, Hookup
-from benchrun.rf.calibration.method import Definitions, Readings
+from benchrun.rf.calibration.method import Definitions, Examiner, Readings
 from benchrun.rf.calibration.one_port import REFLECTIONS, own_reflection, solve_three
 from benchrun.rf.kit import Kit
 from benchrun.rf.terms import Direction, OnePortTerms, TwelveTerms
@@ -78,15 +78,14 @@ class ShortOpenLoadThru:
             Direction(near[1].directivity, near[1].source_match, near[1].tracking, *reverse, leaks[1]),
         )
 
-    def examine(
+    def examiner(
         self,
         f_hz: FloatArray,
         ports: tuple[int, ...],
         kit: Kit,
         readings: Readings,
-        raw: TwoPort,
         isolation: bool = False,
-    ) -> TwoPort:
+    ) -> Examiner:
         """By scikit-rf's ``TwelveTerm``."""
         import skrf
         from skrf.calibration import TwelveTerm
@@ -110,4 +109,4 @@ class ShortOpenLoadThru:
         measured.append(network(readings[Hookup.of("thru", p1, p2).text]))
         leak = network(readings[_LOADS.text]) if isolation else None
         calibration = TwelveTerm(measured=measured, ideals=ideals, n_thrus=1, isolation=leak)
-        return TwoPort.of(calibration.apply_cal(network(raw)).s)
+        return lambda raw: TwoPort.of(calibration.apply_cal(network(raw)).s)

@@ -82,6 +82,9 @@ class FigureKind:
         ``(f_hz, network, **parameters) -> Found`` for a scalar figure.
     reach_hz
         Parameter whose half extends the band at both ends (an aperture), or empty.
+    sense
+        +1 if the value is ``+20 log10`` of one magnitude, -1 if it is ``-20 log10`` of one, else 0. Such a
+        value's uncertainty is found in the magnitude, where it is linear, and then turned into dB.
     """
 
     name: str
@@ -92,6 +95,7 @@ class FigureKind:
     trace: Trace | None = None
     scalar: Callable[..., Found] | None = None
     reach_hz: str = ""
+    sense: int = 0
 
     def band(self, parameters: Mapping[str, Any]) -> tuple[float, float] | None:
         """Lowest and highest frequency that the figure looks at; None for the whole sweep."""

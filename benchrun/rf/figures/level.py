@@ -71,24 +71,25 @@ def _reciprocity(f_hz: FloatArray, network: TwoPort) -> FloatArray:
     return np.abs(network.s21 - network.s12)
 
 
-def _level(name: str, meaning: str, trace: object, **extra: Parameter) -> FigureKind:
+def _level(name: str, meaning: str, trace: object, sense: int = -1, **extra: Parameter) -> FigureKind:
     return FigureKind(
         name,
         Dimension.RATIO,
         meaning,
         {"over": _OVER, "at": _AT, "trace": _TRACE, **extra},
         trace=trace,  # type: ignore[arg-type]
+        sense=sense,
     )
 
 
-def _port(name: str, dimension: Dimension, meaning: str, trace: object) -> FigureKind:
+def _port(name: str, dimension: Dimension, meaning: str, trace: object, sense: int = 0) -> FigureKind:
     parameters = {"over": _OVER, "at": _AT, "port": _PORT}
-    return FigureKind(name, dimension, meaning, parameters, ports=1, trace=trace)  # type: ignore[arg-type]
+    return FigureKind(name, dimension, meaning, parameters, ports=1, trace=trace, sense=sense)  # type: ignore[arg-type]
 
 
 KINDS = (
     _level("insertion loss", "-20 log10 |S21| at every sample of the band", _insertion_loss),
-    _level("gain", "+20 log10 |S21| at every sample of the band", _gain),
+    _level("gain", "+20 log10 |S21| at every sample of the band", _gain, sense=1),
     _level(
         "rejection",
         "-20 log10 |S21| at every sample of the band, less the least loss of the band `against` where that is given",
@@ -100,6 +101,7 @@ KINDS = (
         Dimension.RATIO,
         "-20 log10 |S11| (port 2: |S22|) at every sample of the band",
         _return_loss,
+        sense=-1,
     ),
     _port("VSWR", Dimension.NUMBER, "(1 + |S11|) / (1 - |S11|) at every sample of the band", _vswr),
     _port(
