@@ -8,6 +8,7 @@ from typing import TypeAlias
 import numpy as np
 
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
+from benchrun.uncertainty.decision import COVERAGE_FACTOR
 
 __all__ = ["Data", "Network", "combine"]
 
@@ -28,6 +29,8 @@ class Network:
     varied
         The same values under each variation of what is uncertain: planes of shape ``(v, f)``; None
         where nothing is declared about uncertainty.
+    systematic
+        How many rows of ``varied`` are one-standard-uncertainty steps; the rest are draws of noise.
     z0_ohm
         Real reference impedance of both ports.
     """
@@ -35,6 +38,7 @@ class Network:
     f_hz: FloatArray
     nominal: Data
     varied: Data | None = None
+    systematic: int = 0
     z0_ohm: float = 50.0
 
     @property
@@ -48,6 +52,41 @@ class Network:
         if isinstance(self.nominal, TwoPort):
             return self.nominal.matrix
         return self.nominal[:, np.newaxis, np.newaxis]
+
+    def plane(self, name: str) -> tuple[ComplexArray, ComplexArray | None]:
+        """One parameter, nominal ``(f,)`` and varied ``(v, f)``; of a one-port only its reflection.
+
+        Raises
+        ------
+        KeyError
+            For a parameter that the network does not have.
+        """
+        if isinstance(self.nominal, TwoPort):
+            varied = self.varied.parameter(name) if isinstance(self.varied, TwoPort) else None
+            return self.nominal.parameter(name), varied
+        if name not in ("S11", "S22"):
+            raise KeyError(name)
+        return self.nominal, None if self.varied is None else np.asarray(self.varied)
+
+    def expanded(self, name: str) -> FloatArray:
+        """Expanded uncertainty of one parameter as a complex number, linear, ``(f,)``.
+
+        The radius k times the root of both components' variances: the true value lies within it of the
+        measured one with at least the coverage that k = 2 gives one component.
+
+        Raises
+        ------
+        KeyError
+            For a parameter that the network does not have.
+        ValueError
+            If nothing is declared about uncertainty.
+        """
+        nominal, varied = self.plane(name)
+        if varied is None:
+            raise ValueError("nothing is declared about uncertainty")
+        spread = varied - nominal
+        real, imaginary = combine(spread.real, self.systematic), combine(spread.imag, self.systematic)
+        return np.asarray(COVERAGE_FACTOR * np.hypot(real, imaginary))
 
 
 def combine(spread: FloatArray, systematic: int) -> FloatArray:

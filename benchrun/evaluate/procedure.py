@@ -1,0 +1,49 @@
+"""Everything that decides the numbers, beside the readings themselves."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from benchrun.hookup import Connection, Hookup
+from benchrun.rf.kit import Kit
+from benchrun.rf.masks import Mask
+from benchrun.rf.touchstone import TouchstoneData
+from benchrun.sequence.models import Sequence
+from benchrun.uncertainty.residual import ResidualTerms
+
+__all__ = ["NOISE_SEED", "Procedure"]
+
+NOISE_SEED = 2718
+"""Seed of the noise draws in an uncertainty. Fixed: the same readings must give the same numbers."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Procedure:
+    """A sequence with the files it names.
+
+    Parameters
+    ----------
+    sequence
+        The test.
+    kits, masks, fixtures
+        By the name that the sequence uses.
+    residual
+        Declared residual terms of the bench.
+    noise_seed
+        Seed of the noise draws; stands in the record.
+    """
+
+    sequence: Sequence
+    kits: Mapping[str, Kit] = field(default_factory=dict)
+    masks: Mapping[str, Mask] = field(default_factory=dict)
+    fixtures: Mapping[str, TouchstoneData] = field(default_factory=dict)
+    residual: ResidualTerms = ResidualTerms()
+    noise_seed: int = NOISE_SEED
+
+    def unit_hookup(self, port: int) -> Hookup:
+        """How the unit is connected: in its fixture, between the ports or on ``port`` alone."""
+        unit = self.sequence.unit
+        left, right = (unit.fixture.left, unit.fixture.right) if unit.fixture else (None, None)
+        chain = tuple(item for item in (left, "unit", right if unit.ports == 2 else None) if item)
+        return Hookup((Connection(chain, (1, 2) if unit.ports == 2 else (port,)),))

@@ -1,0 +1,112 @@
+"""What the steps of one unit have found so far."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from benchrun.errors import InvalidMeasurement
+from benchrun.evaluate.judgement import JudgedFigure
+from benchrun.evaluate.network import Data, Network
+from benchrun.evaluate.procedure import Procedure
+from benchrun.rf.calibration.method import Examiner, Terms
+from benchrun.rf.twoport import FloatArray, TwoPort
+from benchrun.uncertainty.decision import Conclusion, worst
+
+__all__ = ["AGREEMENT", "Calibration", "State", "agree"]
+
+AGREEMENT = 1e-9
+"""Greatest difference to scikit-rf that a run may have, linear."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Calibration:
+    """Error terms on a grid, and what goes with them.
+
+    Parameters
+    ----------
+    f_hz
+        ``(f,)``.
+    ports
+        Analyzer ports calibrated.
+    terms
+        The error terms.
+    examiner
+        The same calibration by scikit-rf.
+    noise
+        Unit-variance draws for the uncertainty of every reading corrected with it; None where nothing is
+        declared.
+    z0_ohm
+        Reference impedance, from the kit.
+    """
+
+    f_hz: FloatArray
+    ports: tuple[int, ...]
+    terms: Terms
+    examiner: Examiner
+    noise: Data | None
+    z0_ohm: float
+
+
+@dataclass(slots=True, eq=False)
+class State:
+    """Results by step name.
+
+    Parameters
+    ----------
+    procedure
+        What is evaluated.
+    thorough
+        Have scikit-rf repeat every step, also those that it does slowly; an audit does so always, a run
+        with the first unit after each calibration.
+    """
+
+    procedure: Procedure
+    thorough: bool = True
+    calibrations: dict[str, Calibration] = field(default_factory=dict)
+    networks: dict[str, Network] = field(default_factory=dict)
+    kinds: dict[str, str] = field(default_factory=dict)
+    judged: dict[str, tuple[JudgedFigure, ...]] = field(default_factory=dict)
+    agreements: dict[str, float] = field(default_factory=dict)
+
+    @property
+    def figures(self) -> tuple[JudgedFigure, ...]:
+        """All judged limits, in order."""
+        return tuple(figure for figures in self.judged.values() for figure in figures)
+
+    @property
+    def conclusion(self) -> Conclusion:
+        """The worst of all judged limits."""
+        return worst(Conclusion(figure.conclusion) for figure in self.figures)
+
+    def next_unit(self, calibrations: Mapping[str, Calibration] | None = None) -> State:
+        """A fresh state under the same calibrations."""
+        kept = self.calibrations if calibrations is None else calibrations
+        return State(self.procedure, thorough=False, calibrations=dict(kept))
+
+
+def agree(state: State, step: str, ours: Data, theirs: Data) -> float:
+    """Compare with scikit-rf, and refuse to go on if it disagrees.
+
+    Raises
+    ------
+    InvalidMeasurement
+        If the greatest difference is above :data:`AGREEMENT`, or no number.
+    """
+    difference = float(
+        max(np.max(np.abs(a - b)) for a, b in zip(_planes(ours), _planes(theirs), strict=True))
+    )
+    state.agreements[step] = max(difference, state.agreements.get(step, 0.0))
+    if not difference <= AGREEMENT:
+        raise InvalidMeasurement(
+            f"The result of {step} differs from scikit-rf's by {difference:.2e}; "
+            f"at most {AGREEMENT:.0e} is allowed.",
+            "This is a fault of the program or a reading beyond all reason: keep the record and report it.",
+        )
+    return difference
+
+
+def _planes(data: Data) -> tuple[np.ndarray[tuple[int, ...], np.dtype[np.complex128]], ...]:
+    return data.planes if isinstance(data, TwoPort) else (np.asarray(data),)

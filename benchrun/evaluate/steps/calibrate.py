@@ -1,0 +1,56 @@
+"""Readings of standards to error terms."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+
+from benchrun.evaluate.network import Data
+from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.state import Calibration, State, agree
+from benchrun.hookup import Hookup
+from benchrun.rf.calibration import METHODS, define
+from benchrun.rf.twoport import ComplexArray, TwoPort
+from benchrun.sequence.steps import Calibrate
+
+__all__ = ["NOISE_DRAWS", "CalibrateArithmetic"]
+
+NOISE_DRAWS = 32
+"""Draws of noise: their mean square is then known to about one part in eight (1 / sqrt(2 n))."""
+
+
+class CalibrateArithmetic:
+    """Solve a calibration and have scikit-rf solve it too."""
+
+    def hookups(self, step: Calibrate, procedure: Procedure) -> tuple[Hookup, ...]:
+        """The standards of the method."""
+        return METHODS[step.method].required(step.used_ports, step.isolation)
+
+    def apply(self, step: Calibrate, state: State, readings: Mapping[str, TwoPort]) -> None:
+        """Leave a :class:`Calibration`."""
+        procedure, method, ports = state.procedure, METHODS[step.method], step.used_ports
+        f_hz, kit = procedure.sequence.sweeps[step.sweep].grid(), procedure.kits[step.kit]
+        terms = method.solve(ports, define(kit, method.standards, f_hz), readings, step.isolation)
+        examiner = method.examiner(f_hz, ports, kit, readings, step.isolation)
+        for hookup in self.hookups(step, procedure)[-1:]:  # the last one joins the ports, or is the load
+            raw = readings[hookup.text]
+            agree(state, step.name, _correct(terms, raw, ports), examiner(raw))
+        noise = _noise(len(ports), len(f_hz), procedure.noise_seed) if procedure.residual.declared else None
+        state.calibrations[step.name] = Calibration(f_hz, ports, terms, examiner, noise, kit.z0_ohm)
+
+
+def _correct(terms: object, raw: TwoPort, ports: tuple[int, ...]) -> Data:
+    from benchrun.evaluate.steps.sweep import correct
+
+    return correct(terms, raw, ports)
+
+
+def _noise(ports: int, points: int, seed: int) -> Data:
+    generator = np.random.default_rng(seed)
+
+    def plane() -> ComplexArray:
+        pair = generator.standard_normal((2, NOISE_DRAWS, points))
+        return np.asarray((pair[0] + 1j * pair[1]) / np.sqrt(2.0))
+
+    return TwoPort(plane(), plane(), plane(), plane()) if ports == 2 else plane()

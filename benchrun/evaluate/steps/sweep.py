@@ -1,0 +1,53 @@
+"""A raw reading of the unit to corrected S-parameters, with the variations of their uncertainty."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from benchrun.evaluate.network import Data, Network
+from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.state import State, agree
+from benchrun.hookup import Hookup
+from benchrun.rf.calibration.one_port import own_reflection
+from benchrun.rf.terms import OnePortTerms, TwelveTerms
+from benchrun.rf.twoport import TwoPort
+from benchrun.sequence.steps import Calibrate, Sweep
+
+__all__ = ["SweepArithmetic", "correct"]
+
+
+def correct(terms: object, raw: TwoPort, ports: tuple[int, ...]) -> Data:
+    """Take the error terms out of a raw reading."""
+    if isinstance(terms, TwelveTerms):
+        return terms.correct(raw)
+    assert isinstance(terms, OnePortTerms)  # the two kinds of terms that methods solve for
+    return terms.correct(own_reflection(raw, ports[0]))
+
+
+class SweepArithmetic:
+    """Correct where a calibration is named; else hand on the raw reading, without uncertainty."""
+
+    def hookups(self, step: Sweep, procedure: Procedure) -> tuple[Hookup, ...]:
+        """The unit in its fixture."""
+        named = (s for s in procedure.sequence.steps if isinstance(s, Calibrate) and s.name == step.with_)
+        port = next((s.used_ports[0] for s in named), 1)
+        return (procedure.unit_hookup(port),)
+
+    def apply(self, step: Sweep, state: State, readings: Mapping[str, TwoPort]) -> None:
+        """Leave a network."""
+        procedure = state.procedure
+        raw = readings[self.hookups(step, procedure)[0].text]
+        if step.with_ is None:
+            grid = procedure.sequence.sweep_of(step).grid()
+            nominal: Data = raw if procedure.sequence.unit.ports == 2 else raw.s11
+            state.networks[step.name], state.kinds[step.name] = Network(grid, nominal), "uncorrected"
+            return
+        calibration, residual = state.calibrations[step.with_], procedure.residual
+        nominal = correct(calibration.terms, raw, calibration.ports)
+        agree(state, step.name, nominal, calibration.examiner(raw))
+        varied, systematic = None, 0
+        if calibration.noise is not None:
+            varied = residual.vary(nominal, calibration.noise)
+            systematic = residual.steps if isinstance(nominal, TwoPort) else residual.one_port_steps
+        state.networks[step.name] = Network(calibration.f_hz, nominal, varied, systematic, calibration.z0_ohm)
+        state.kinds[step.name] = "corrected"
