@@ -44,7 +44,7 @@ class Dimension(Enum):
         self.example = example
 
 
-_NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?"
+_NUMBER = r"[+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+)(?:[eE][+-]?[0-9]+)?"
 _TEXT = re.compile(rf"({_NUMBER})\s*([^\d\s].*)?")
 _ALIASES = {
     "Ω": "ohm",
@@ -61,9 +61,11 @@ _PREFIXES = {
     "": 1.0, "f": 1e-15, "p": 1e-12, "n": 1e-9, "u": 1e-6, "µ": 1e-6, "μ": 1e-6, "m": 1e-3,
     "k": 1e3, "M": 1e6, "G": 1e9, "T": 1e12,
 }  # fmt: skip
+_LARGE = (Dimension.FREQUENCY, Dimension.IMPEDANCE, Dimension.LOSS_RATE)
+"""Where mega and above are met at a bench; elsewhere "120 MA" is a slip for "120 mA" and may burn a part."""
 
 
-def parse(text: str, dimension: Dimension) -> float:
+def parse(text: object, dimension: Dimension) -> float:
     """Read one value.
 
     Parameters
@@ -81,7 +83,8 @@ def parse(text: str, dimension: Dimension) -> float:
     Raises
     ------
     QuantityError
-        If there is no number, no unit, another unit, or the value is not finite.
+        If there is no number, no unit, another unit, a prefix that no bench has use for (millihertz,
+        megaamperes: M and m mistaken), or the value is not finite.
 
     Examples
     --------
@@ -110,8 +113,6 @@ def parse(text: str, dimension: Dimension) -> float:
     )
     if not math.isfinite(value):
         raise QuantityError(f"{text!r} is too large to be a value; {wanted}")
-    if dimension is Dimension.FREQUENCY and 0 < abs(value) < 1.0 and unit.startswith("m"):
-        raise QuantityError(f"{text!r} is {value:g} Hz (m is milli); did you mean MHz?")
     return value
 
 
@@ -133,13 +134,24 @@ def _factor(text: str, unit: str, dimension: Dimension, wanted: str) -> float:
         return 1.0
     prefix = unit.removesuffix(dimension.unit)
     if dimension.scaled and prefix != unit and prefix in _PREFIXES:
+        if dimension is Dimension.FREQUENCY and prefix == "m":
+            raise QuantityError(f'{text!r} is in millihertz (m is milli); did you mean "MHz"?')
+        if dimension not in _LARGE and _PREFIXES[prefix] >= 1e6:
+            raise QuantityError(f"{text!r} is beyond any bench (M is mega); {wanted}")
         return _PREFIXES[prefix]
-    hint = next((f'; did you mean "{p}{dimension.unit}"?' for p in (prefix, unit[:1], "")
-                 if dimension.scaled and p in _PREFIXES and (p + dimension.unit).lower() == unit.lower()), "")  # fmt: skip
-    raise QuantityError(f"{text!r} is not in {dimension.unit}{hint or f'; {wanted}'}")
+    raise QuantityError(f"{text!r} is not in {dimension.unit}{_hint(unit, dimension) or f'; {wanted}'}")
 
 
-def parse_range(text: str, dimension: Dimension) -> tuple[float, float]:
+def _hint(unit: str, dimension: Dimension) -> str:
+    """Where only capitals are wrong, the unit that was likely meant."""
+    order = ("", "k", "M", "G", "T", "m", "u", "n", "p", "f") if dimension in _LARGE else ("", *"kmunpf")
+    prefixes = order if dimension.scaled else ("",)
+    likely = (p + dimension.unit for p in prefixes if (p + dimension.unit).lower() == unit.lower())
+    found = next(likely, "")
+    return f'; did you mean "{found}"?' if found else ""
+
+
+def parse_range(text: object, dimension: Dimension) -> tuple[float, float]:
     """Read two values joined by "to".
 
     Raises
@@ -171,7 +183,7 @@ def render(value: float, dimension: Dimension, digits: int = 4) -> str:
     value
         In ``dimension.unit``.
     digits
-        Significant digits for scaled units; decibels and the like get two or three decimals.
+        Significant digits; decibels and the like get no more than three decimals.
 
     Examples
     --------
@@ -182,8 +194,10 @@ def render(value: float, dimension: Dimension, digits: int = 4) -> str:
     """
     if not math.isfinite(value):
         return str(value)
+    if dimension is Dimension.NUMBER:
+        return f"{value + 0.0:.{digits}g}"  # adding zero turns -0.0 into 0.0
     if not dimension.scaled:
-        return f"{round(value, 3):.{digits}g} {dimension.unit}".strip()
+        return f"{round(value, 3) + 0.0:.{digits}g} {dimension.unit}"
     if value == 0:
         return f"0 {dimension.unit}"
     from quantiphy import Quantity  # 11 ms: only where something is printed
