@@ -63,7 +63,7 @@ class Offset:
         alpha = self.loss_ohm_per_s * tau / (2.0 * self.z0_ohm) * root
         gamma = alpha + 1j * (2.0 * np.pi * f_hz * tau + alpha)
         zc = self.z0_ohm + (1.0 - 1.0j) * self.loss_ohm_per_s / (4.0 * np.pi * f_hz) * root
-        return gamma, zc
+        return np.asarray(gamma), np.asarray(zc)
 
 
 @dataclass(frozen=True, slots=True)
@@ -195,5 +195,5 @@ class Kit:
     connector: str = ""
 
     def with_standard(self, name: str, standard: Standard) -> Kit:
-        """The same kit with one standard replaced."""
+        """Copy the kit with one standard replaced."""
         return replace(self, standards={**self.standards, name: standard})

@@ -22,11 +22,11 @@ class OnePortTerms:
     tracking: ComplexArray
 
     def embed(self, s: ComplexArray) -> ComplexArray:
-        """True reflection to raw reading: ``M = eD + eR S / (1 - eS S)``."""
+        """Turn a true reflection into a raw reading: ``M = eD + eR S / (1 - eS S)``."""
         return self.directivity + self.tracking * s / (1.0 - self.source_match * s)
 
     def correct(self, m: ComplexArray) -> ComplexArray:
-        """Raw reading to true reflection: ``S = (M - eD) / (eR + eS (M - eD))``."""
+        """Turn a raw reading into a true reflection: ``S = (M - eD) / (eR + eS (M - eD))``."""
         d = m - self.directivity
         return d / (self.tracking + self.source_match * d)
 
@@ -66,7 +66,7 @@ class TwelveTerms:
     reverse: Direction
 
     def embed(self, s: TwoPort) -> TwoPort:
-        """True S-parameters to raw readings."""
+        """Turn true S-parameters into raw readings."""
         f, r, det = self.forward, self.reverse, s.determinant
         d1 = 1.0 - f.source_match * s.s11 - f.load_match * s.s22 + f.source_match * f.load_match * det
         d2 = 1.0 - r.load_match * s.s11 - r.source_match * s.s22 + r.load_match * r.source_match * det
@@ -78,7 +78,7 @@ class TwelveTerms:
         )
 
     def correct(self, m: TwoPort) -> TwoPort:
-        """Raw readings to true S-parameters."""
+        """Turn raw readings into true S-parameters."""
         f, r = self.forward, self.reverse
         a = (m.s11 - f.directivity) / f.tracking
         b = (m.s21 - f.isolation) / f.transmission

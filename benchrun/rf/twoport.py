@@ -70,7 +70,7 @@ class TwoPort:
 
     @classmethod
     def through(cls, points: int) -> TwoPort:
-        """A zero-length, lossless thru of ``points`` frequencies."""
+        """Make a zero-length, lossless thru of ``points`` frequencies."""
         zero, one = np.zeros(points, np.complex128), np.ones(points, np.complex128)
         return cls(zero, one, one, zero)
 
@@ -105,7 +105,7 @@ class TwoPort:
         return TwoPort(*(function(p) for p in self.planes))
 
     def flipped(self) -> TwoPort:
-        """The same part turned round: ports 1 and 2 exchanged."""
+        """Turn the part round: ports 1 and 2 exchanged."""
         return TwoPort(self.s22, self.s21, self.s12, self.s11)
 
     def __matmul__(self, right: TwoPort) -> TwoPort:
@@ -124,7 +124,7 @@ class TwoPort:
         return self.s11 + self.s12 * self.s21 * gamma / (1.0 - self.s22 * gamma)
 
     def without_left(self, left: TwoPort) -> TwoPort:
-        """What remains when ``left``, which stood before port 1, is taken away.
+        """Take away ``left``, which stood before port 1.
 
         Solved in the S-domain from the star product ``self = left @ rest``; needs transmission both ways
         in ``left`` only, so a rest with no transmission at all is exact.
@@ -139,5 +139,5 @@ class TwoPort:
         return TwoPort(s11, s12, s21, s22)
 
     def without_right(self, right: TwoPort) -> TwoPort:
-        """What remains when ``right``, which stood behind port 2, is taken away."""
+        """Take away ``right``, which stood behind port 2."""
         return self.flipped().without_left(right.flipped()).flipped()

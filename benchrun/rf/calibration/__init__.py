@@ -21,7 +21,7 @@ def define(
     f_hz: FloatArray,
     deltas: Mapping[str, Mapping[str, float | FloatArray]] | None = None,
 ) -> Definitions:
-    """What the kit says its standards are, on this grid.
+    """Evaluate what the kit says its standards are, on this grid.
 
     Parameters
     ----------
@@ -55,9 +55,10 @@ def define(
 
 
 def differ(a: object, b: object) -> float:
-    """Greatest absolute difference of two corrected results, linear."""
+    """Greatest absolute difference of two corrected results, linear; nan if either holds a nan."""
     import numpy as np
 
     if isinstance(a, TwoPort) and isinstance(b, TwoPort):
-        return max(float(np.max(np.abs(x - y))) for x, y in zip(a.planes, b.planes, strict=True))
+        # numpy's max hands a nan on; Python's would lose it in the second place and later.
+        return float(np.max([np.max(np.abs(x - y)) for x, y in zip(a.planes, b.planes, strict=True)]))
     return float(np.max(np.abs(np.asarray(a) - np.asarray(b))))

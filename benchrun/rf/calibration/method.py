@@ -31,7 +31,7 @@ class Method(Protocol):
     """Names of the standards it takes from the kit."""
 
     def required(self, ports: tuple[int, ...], isolation: bool = False) -> tuple[Hookup, ...]:
-        """The hook-ups to read, in the order that spares hands the most."""
+        """Name the hook-ups to read, in the order that spares hands the most."""
         ...
 
     def solve(

@@ -40,14 +40,19 @@ def solve_three(truths: Sequence[ComplexArray], readings: Sequence[ComplexArray]
     Raises
     ------
     InvalidMeasurement
-        If two readings are so alike that they cannot be different standards.
+        If two readings are so alike that they cannot be different standards, or one is not a number.
     """
     (s1, s2, s3), (m1, m2, m3) = truths, readings
+    if not all(np.isfinite(m).all() for m in readings):
+        raise InvalidMeasurement(
+            f"A reading of short, open or load on {where} holds a value that is not a number.",
+            "Read the three standards again.",
+        )
     gap = min(float(np.min(np.abs(x - y))) for x, y in ((m1, m2), (m2, m3), (m1, m3)))
     if not gap > 1e-3:
         raise InvalidMeasurement(
-            f"Two of the readings of short, open and load on {where} differ by only {gap:.1e} somewhere in the "
-            "sweep, so they cannot be three different standards.",
+            f"Two of the readings of short, open and load on {where} differ by only {gap:.1e} somewhere in "
+            "the sweep, so they cannot be three different standards.",
             "Connect each standard once more and read the three again.",
         )
     # Eliminating a and b: c from the ratio of differences, then b, then a.

@@ -46,6 +46,7 @@ class ShortOpenLoadThru:
 
     def required(self, ports: tuple[int, ...], isolation: bool = False) -> tuple[Hookup, ...]:
         """Seven hook-ups, eight with isolation."""
+        ports = tuple(sorted(ports))
         one = tuple(Hookup.of(name, port) for port in ports for name in REFLECTIONS)
         thru = Hookup.of("thru", *ports)
         return (*one, _LOADS, thru) if isolation else (*one, thru)
@@ -54,6 +55,7 @@ class ShortOpenLoadThru:
         self, ports: tuple[int, ...], definitions: Definitions, readings: Readings, isolation: bool = False
     ) -> TwelveTerms:
         """Twelve terms, in closed form."""
+        ports = tuple(sorted(ports))  # forward always drives the lower port
         truths = [np.asarray(definitions[n]) for n in REFLECTIONS]
         near = [
             solve_three(
@@ -62,10 +64,15 @@ class ShortOpenLoadThru:
             for p in ports
         ]
         thru, read = cast(TwoPort, definitions["thru"]), readings[Hookup.of("thru", *ports).text]
+        if not all(np.isfinite(plane).all() for plane in read.planes):
+            raise InvalidMeasurement(
+                "The reading of the thru holds a value that is not a number.", "Read the thru again."
+            )
         weakest = float(min(np.min(np.abs(read.s21)), np.min(np.abs(read.s12))))
         if not weakest > 1e-4:
             raise InvalidMeasurement(
-                f"The thru lets through only {20 * np.log10(max(weakest, 1e-12)):.0f} dB somewhere in the sweep.",
+                f"The thru lets through only {20 * np.log10(max(weakest, 1e-12)):.0f} dB somewhere in the "
+                "sweep.",
                 "Join the two ports with the thru, tighten both sides, and read it again.",
             )
         leaks: tuple[ComplexArray | complex, ComplexArray | complex] = (0.0, 0.0)
@@ -99,7 +106,7 @@ class ShortOpenLoadThru:
             zero = np.zeros_like(one)
             return network(TwoPort(one, zero, zero, two))
 
-        p1, p2 = ports
+        p1, p2 = sorted(ports)
         measured, ideals = [], []
         for n in REFLECTIONS:
             truth = kit.standards[n].reflection(f_hz, kit.z0_ohm)
