@@ -42,13 +42,15 @@ class MaskLine:
     def __post_init__(self) -> None:
         if len(self.f_hz) < 2 or np.any(np.diff(self.f_hz) < 0):
             raise ValueError("a mask line needs two or more points whose frequencies do not go backwards")
+        if self.spacing == "log" and not self.f_hz[0] > 0:
+            raise ValueError("a mask line straight over the logarithm of frequency starts above 0 Hz")
 
     def inside(self, f_hz: FloatArray) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:
         """Which frequencies the line covers, ``(f,)``."""
         return np.asarray((f_hz >= self.f_hz[0]) & (f_hz <= self.f_hz[-1]))
 
     def limit_at(self, f_hz: FloatArray) -> FloatArray:
-        """The limit in dB at frequencies inside the line, ``(f,)``; at a step the stricter level counts."""
+        """Interpolate the limit in dB at ``(f,)`` frequencies inside; at a step the stricter level counts."""
         x, xs = (np.log(self.f_hz), np.log(f_hz)) if self.spacing == "log" else (self.f_hz, f_hz)
         before, after = self._side(x, xs, "left"), self._side(x, xs, "right")
         return np.minimum(before, after) if self.side == "at most" else np.maximum(before, after)
@@ -57,6 +59,8 @@ class MaskLine:
         right = np.clip(np.searchsorted(x, xs, "left" if side == "left" else "right"), 1, len(x) - 1)
         width = x[right] - x[right - 1]
         weight = np.clip((xs - x[right - 1]) / np.where(width == 0, 1.0, width), 0.0, 1.0)
+        if side == "right":  # a line that ends in a step ends at the step's far level
+            weight = np.where(width == 0, 1.0, weight)
         return np.asarray(self.level_db[right - 1] * (1.0 - weight) + self.level_db[right] * weight)
 
 

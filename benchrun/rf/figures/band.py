@@ -8,7 +8,7 @@ from benchrun.errors import InvalidMeasurement
 from benchrun.quantity import Dimension, render
 from benchrun.rf.twoport import ComplexArray, FloatArray
 
-__all__ = ["at", "decibels", "in_band", "require_inside"]
+__all__ = ["at", "decibels", "in_band", "require_inside", "samples"]
 
 _FLOOR = 1e-20
 
@@ -57,13 +57,22 @@ def at(f_hz: FloatArray, values: FloatArray, where_hz: FloatArray | float) -> Fl
     right = np.clip(np.searchsorted(f_hz, where), 1, len(f_hz) - 1)
     x0, x1 = f_hz[right - 1], f_hz[right]
     weight = np.clip((where - x0) / (x1 - x0), 0.0, 1.0)
-    return np.asarray(values[..., right - 1] * (1.0 - weight) + values[..., right] * weight)
+    # On a sample the neighbour has no say, not even as "nan times nothing".
+    before = np.where(weight == 1.0, 0.0, values[..., right - 1])
+    after = np.where(weight == 0.0, 0.0, values[..., right])
+    return np.asarray(before * (1.0 - weight) + after * weight)
+
+
+def samples(f_hz: FloatArray, low_hz: float, high_hz: float) -> FloatArray:
+    """Both edges of a band and the frequencies of the sweep between them, ``(k,)``."""
+    first, last = np.searchsorted(f_hz, low_hz, "right"), np.searchsorted(f_hz, high_hz, "left")
+    return np.concatenate([[low_hz], f_hz[first:last], [high_hz]])
 
 
 def in_band(
     f_hz: FloatArray, values: FloatArray, low_hz: float, high_hz: float
 ) -> tuple[FloatArray, FloatArray]:
-    """The samples inside a band, and both edges by interpolation.
+    """Take the samples inside a band, and both edges by interpolation.
 
     So a figure does not depend on whether a grid point happens to lie on the edge.
 
@@ -73,6 +82,6 @@ def in_band(
         ``(k,)`` and ``(..., k)``; the first and last sample are the edges.
     """
     first, last = np.searchsorted(f_hz, low_hz, "right"), np.searchsorted(f_hz, high_hz, "left")
-    f = np.concatenate([[low_hz], f_hz[first:last], [high_hz]])
     edges = at(f_hz, values, np.array([low_hz, high_hz]))
-    return f, np.concatenate([edges[..., :1], values[..., first:last], edges[..., 1:]], axis=-1)
+    inner = values[..., first:last]
+    return samples(f_hz, low_hz, high_hz), np.concatenate([edges[..., :1], inner, edges[..., 1:]], axis=-1)

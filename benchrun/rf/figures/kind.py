@@ -10,7 +10,7 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.quantity import Dimension
-from benchrun.rf.figures.band import at, in_band, require_inside
+from benchrun.rf.figures.band import in_band, require_inside, samples
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
 __all__ = ["FigureKind", "Found", "Parameter", "Trace"]
@@ -85,6 +85,9 @@ class FigureKind:
     sense
         +1 if the value is ``+20 log10`` of one magnitude, -1 if it is ``-20 log10`` of one, else 0. Such a
         value's uncertainty is found in the magnitude, where it is linear, and then turned into dB.
+    between
+        ``(f_hz, network, where_hz, **parameters) -> (..., k)`` for a trace figure that can be taken between
+        samples; without it the trace is interpolated.
     """
 
     name: str
@@ -96,6 +99,7 @@ class FigureKind:
     scalar: Callable[..., Found] | None = None
     reach_hz: str = ""
     sense: int = 0
+    between: Trace | None = None
 
     def band(self, parameters: Mapping[str, Any]) -> tuple[float, float] | None:
         """Lowest and highest frequency that the figure looks at; None for the whole sweep."""
@@ -132,21 +136,32 @@ class FigureKind:
         band = self.band(parameters)
         if band is not None:
             require_inside(f_hz, *band, self.name)
+        if parameters.get("against") is not None:
+            low, high = parameters["against"]
+            require_inside(f_hz, low, high, f"the reference of {self.name}")
         if self.scalar is not None:
             found = self.scalar(f_hz, network, **parameters)
             if found.value.ndim == 0 and not np.isfinite(found.value):
                 raise InvalidMeasurement(f"{self.name} cannot be told: {self.meaning}", "Look at the trace.")
             return found
-        values = self._values(f_hz, network, **parameters)
         if parameters.get("at") is not None:
-            value = at(f_hz, values, parameters["at"])[..., 0]
+            value = self._values(f_hz, network, (parameters["at"],) * 2, parameters)[1][..., 0]
             return Found(value, np.full(value.shape, parameters["at"]))
-        low, high = parameters["over"]
-        f, v = in_band(f_hz, values, low, high)
+        f, v = self._values(f_hz, network, parameters["over"], parameters)
         index = np.argmax(v, -1) if side == "at most" else np.argmin(v, -1)
         return Found(np.take_along_axis(v, index[..., np.newaxis], -1)[..., 0], f[index])
 
-    def _values(self, f_hz: FloatArray, network: TwoPort | ComplexArray, **parameters: Any) -> FloatArray:
-        assert self.trace is not None  # a kind has a trace or a scalar, see the table's test
+    def _values(
+        self,
+        f_hz: FloatArray,
+        network: TwoPort | ComplexArray,
+        band: tuple[float, float],
+        parameters: Mapping[str, Any],
+    ) -> tuple[FloatArray, FloatArray]:
+        """Frequencies of a band and the trace there, edges included."""
         rest = {k: v for k, v in parameters.items() if k not in ("over", "at")}
-        return self.trace(f_hz, network, **rest)
+        if self.between is not None:
+            where = samples(f_hz, *band)
+            return where, self.between(f_hz, network, where, **rest)
+        assert self.trace is not None  # a kind has a trace or a scalar, see the table's test
+        return in_band(f_hz, self.trace(f_hz, network, **rest), *band)

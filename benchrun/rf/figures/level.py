@@ -31,11 +31,11 @@ def transmission(network: TwoPort | ComplexArray, trace: str) -> ComplexArray:
     return network.parameter(trace)
 
 
-def _insertion_loss(f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
+def _insertion_loss(_f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
     return -decibels(transmission(network, trace))
 
 
-def _gain(f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
+def _gain(_f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
     return decibels(transmission(network, trace))
 
 
@@ -48,16 +48,16 @@ def _rejection(
     return np.asarray(loss - in_band(f_hz, loss, *against)[1].min(-1, keepdims=True))
 
 
-def _return_loss(f_hz: FloatArray, network: TwoPort | ComplexArray, port: int = 1) -> FloatArray:
+def _return_loss(_f_hz: FloatArray, network: TwoPort | ComplexArray, port: int = 1) -> FloatArray:
     return -decibels(reflection(network, port))
 
 
-def _vswr(f_hz: FloatArray, network: TwoPort | ComplexArray, port: int = 1) -> FloatArray:
+def _vswr(_f_hz: FloatArray, network: TwoPort | ComplexArray, port: int = 1) -> FloatArray:
     magnitude = np.minimum(np.abs(reflection(network, port)), 1.0 - 1e-9)
     return np.asarray((1.0 + magnitude) / (1.0 - magnitude))
 
 
-def _mismatch_loss(f_hz: FloatArray, network: TwoPort | ComplexArray, port: int = 1) -> FloatArray:
+def _mismatch_loss(_f_hz: FloatArray, network: TwoPort | ComplexArray, port: int = 1) -> FloatArray:
     power = np.minimum(np.abs(reflection(network, port)) ** 2, 1.0 - 1e-9)
     return np.asarray(-10.0 * np.log10(1.0 - power))
 
@@ -67,7 +67,7 @@ def _ripple(f_hz: FloatArray, network: TwoPort, over: tuple[float, float], trace
     return Found(v.max(-1) - v.min(-1), f[np.argmin(v, -1)])
 
 
-def _reciprocity(f_hz: FloatArray, network: TwoPort) -> FloatArray:
+def _reciprocity(_f_hz: FloatArray, network: TwoPort) -> FloatArray:
     return np.abs(network.s21 - network.s12)
 
 
@@ -92,7 +92,8 @@ KINDS = (
     _level("gain", "+20 log10 |S21| at every sample of the band", _gain, sense=1),
     _level(
         "rejection",
-        "-20 log10 |S21| at every sample of the band, less the least loss of the band `against` where that is given",
+        "-20 log10 |S21| at every sample of the band, less the least loss of the band `against` where that "
+        "is given",
         _rejection,
         against=Parameter("range", Dimension.FREQUENCY, optional=True),
     ),

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from benchrun.quantity import Dimension
-from benchrun.rf.figures.band import at, in_band
+from benchrun.rf.figures.band import at, samples
 from benchrun.rf.figures.kind import FigureKind, Found, Parameter
 from benchrun.rf.figures.level import transmission
 from benchrun.rf.twoport import FloatArray, TwoPort
@@ -18,11 +18,14 @@ _TRACE = Parameter("choice", default="S21", choices=("S21", "S12"))
 _APERTURE = Parameter("value", Dimension.FREQUENCY)
 
 
-def group_delay(f_hz: FloatArray, network: TwoPort, aperture: float, trace: str = "S21") -> FloatArray:
+def group_delay(
+    f_hz: FloatArray, network: TwoPort, where_hz: FloatArray, aperture: float, trace: str = "S21"
+) -> FloatArray:
     r"""Group delay with a stated aperture.
 
     :math:`\tau(f) = -\frac{\varphi(f+a/2)-\varphi(f-a/2)}{2\pi a}` with the unwrapped phase interpolated
-    linearly between samples. Samples nearer than half an aperture to the end of the sweep have no value.
+    linearly between samples, at any frequency, on the grid or not. Frequencies nearer than half an
+    aperture to an end of the sweep have no value.
 
     Parameters
     ----------
@@ -30,31 +33,36 @@ def group_delay(f_hz: FloatArray, network: TwoPort, aperture: float, trace: str 
         ``(f,)``.
     network
         Planes ``(..., f)``.
+    where_hz
+        Where it is wanted, ``(k,)``.
     aperture
         In Hz; at least one grid step, or the interpolation would only repeat itself.
 
     Returns
     -------
     numpy.ndarray
-        Seconds, ``(..., f)``; nan near the ends.
+        Seconds, ``(..., k)``; nan near the ends.
     """
     phase = np.unwrap(np.angle(transmission(network, trace)), axis=-1)
-    inside = (f_hz - aperture / 2 >= f_hz[0] * (1 - 1e-12)) & (f_hz + aperture / 2 <= f_hz[-1] * (1 + 1e-12))
-    result = np.full(phase.shape, np.nan)
-    centre = f_hz[inside]
-    step = at(f_hz, phase, centre + aperture / 2) - at(f_hz, phase, centre - aperture / 2)
-    result[..., inside] = -step / (2.0 * np.pi * aperture)
-    return result
+    low, high = where_hz - aperture / 2, where_hz + aperture / 2
+    inside = (low >= f_hz[0] * (1 - 1e-12)) & (high <= f_hz[-1] * (1 + 1e-12))
+    step = at(f_hz, phase, high) - at(f_hz, phase, low)
+    return np.asarray(np.where(inside, -step / (2.0 * np.pi * aperture), np.nan))
 
 
-def _phase(f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
+def _group_delay_trace(f_hz: FloatArray, network: TwoPort, aperture: float, trace: str = "S21") -> FloatArray:
+    return group_delay(f_hz, network, f_hz, aperture, trace)
+
+
+def _phase(_f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
     return np.asarray(np.degrees(np.unwrap(np.angle(transmission(network, trace)), axis=-1)))
 
 
 def _variation(
     f_hz: FloatArray, network: TwoPort, over: tuple[float, float], aperture: float, trace: str
 ) -> Found:
-    f, v = in_band(f_hz, group_delay(f_hz, network, aperture, trace), *over)
+    f = samples(f_hz, *over)
+    v = group_delay(f_hz, network, f, aperture, trace)
     return Found(v.max(-1) - v.min(-1), f[np.argmax(v, -1)])
 
 
@@ -64,8 +72,9 @@ KINDS = (
         Dimension.TIME,
         "phase difference over `aperture`, divided by 2 pi times the aperture, at every sample of the band",
         {"over": _OVER, "at": _AT, "aperture": _APERTURE, "trace": _TRACE},
-        trace=group_delay,
+        trace=_group_delay_trace,
         reach_hz="aperture",
+        between=group_delay,
     ),
     FigureKind(
         "group delay variation",
