@@ -19,6 +19,8 @@ __all__ = ["TouchstoneData", "read", "write"]
 
 _UNITS = {"hz": 1.0, "khz": 1e3, "mhz": 1e6, "ghz": 1e9}
 _WIDTH = {1: 3, 2: 9}
+_NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+_NOT_FINITE = re.compile(r"[+-]?(?:nan|inf|infinity)", re.I)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -72,7 +74,7 @@ def read(data: bytes, name: str) -> TouchstoneData:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         raise InputError(Problem(f"is not text: byte {error.start} is no UTF-8", name)) from None
-    if re.search(r"^\s*\[version\]", text, re.I | re.M):
+    if re.search(r"^[ \t]*\[version\]", text, re.I | re.M):
         return _read_version_2(text, name)
     ports = re.search(r"\.s([12])p$", name, re.I)
     if ports is None:
@@ -94,30 +96,41 @@ class _Reader:
         return InputError(Problem(message, self.name, line, column, advice))
 
     def result(self) -> TouchstoneData:
-        width, pending, number = _WIDTH[self.ports], list[float](), 0
-        for number, raw in enumerate(self.text.splitlines(), 1):
+        width, pending, number, noise = _WIDTH[self.ports], list[float](), 0, 0.0
+        # Only what an editor counts as a line counts here; a form feed does not end one.
+        for number, raw in enumerate(re.split(r"\r\n|\r|\n", self.text), 1):
             content = raw.split("!", 1)[0]
             if content.lstrip().startswith("#"):
                 if not self.seen_option:
                     self.option(content, number)
                 continue
-            for match in re.finditer(r"\S+", content):
-                pending.append(self.number(match[0], number, match.start() + 1))
-            if len(pending) >= width:
-                if self.rows and pending[0] * self.scale <= self.rows[-1][0]:
-                    if len(pending) == 5 * (len(pending) // 5) and self.ports == 2:
-                        return self.finish(number)  # noise data begins where frequency falls back
-                    raise self.fail(
-                        f"frequency {pending[0]:g} does not increase",
-                        number,
-                        advice="Frequencies must be in rising order.",
-                    )
-                if len(pending) > width:
-                    raise self.fail(f"has {len(pending)} numbers where {width} make one frequency", number)
+            words = [(m[0], m.start() + 1) for m in re.finditer(r"\S+", content)]
+            if not words:
+                continue
+            start = words[0][1]
+            fresh = [self.number(word, number, column) for word, column in words]
+            if not self.seen_option:
+                raise self.fail(
+                    "has data before any option line, so unit and format are unknown",
+                    number,
+                    start,
+                    'A line such as "# Hz S RI R 50" comes first.',
+                )
+            falls_back = bool(self.rows) and fresh[0] * self.scale <= self.rows[-1][0]
+            if noise or (self.ports == 2 and not pending and len(fresh) == 5 and falls_back):
+                # Noise data of a two-port begins where frequency falls back (specification, noise data).
+                if len(fresh) != 5 or fresh[0] <= noise:
+                    raise self.fail("is no line of noise data: five numbers, rising frequency", number, start)
+                noise = fresh[0]
+                continue
+            if not pending:
+                self.check_frequency(fresh[0], number, start)
+            pending += fresh
+            if len(pending) > width:
+                raise self.fail(f"has {len(pending)} numbers where {width} make one frequency", number, start)
+            if len(pending) == width:
                 self.rows.append([pending[0] * self.scale, *pending[1:]])
                 pending = []
-            elif pending and len(pending) == 5 and self.rows and pending[0] * self.scale <= self.rows[-1][0]:
-                return self.finish(number)
         if pending:
             raise self.fail(
                 f"ends in the middle of a frequency: {len(pending)} of {width} numbers",
@@ -126,79 +139,108 @@ class _Reader:
             )
         return self.finish(number)
 
+    def check_frequency(self, value: float, line: int, column: int) -> None:
+        if value < 0 or not np.isfinite(value * self.scale):
+            raise self.fail(f"{value:g} is no frequency", line, column)
+        if self.rows and value * self.scale <= self.rows[-1][0]:
+            raise self.fail(
+                f"frequency {value:g} does not increase", line, column, "Frequencies must be in rising order."
+            )
+
     def option(self, content: str, line: int) -> None:
         self.seen_option = True
-        words = content.replace("#", " ").lower().split()
+        words = [(m[0].lower(), m.start() + 1) for m in re.finditer(r"[^\s#]+", content)]
         while words:
-            word = words.pop(0)
+            word, column = words.pop(0)
             if word in _UNITS:
                 self.scale = _UNITS[word]
             elif word in ("ma", "db", "ri"):
                 self.form = word
             elif word == "r" and words:
-                self.z0 = self.number(words.pop(0), line, content.lower().find(" r ") + 3)
+                text, column = words.pop(0)
+                self.z0 = self.number(text, line, column)
+                if self.z0 <= 0:
+                    raise self.fail(f"{text} ohm is no reference resistance", line, column)
             elif word in ("y", "z", "h", "g"):
                 raise self.fail(
-                    f"holds {word.upper()}-parameters", line, advice="Convert it to S-parameters first."
+                    f"holds {word.upper()}-parameters", line, column, "Convert it to S-parameters first."
                 )
             elif word != "s":
-                raise self.fail(f"{word!r} means nothing in an option line", line)
+                raise self.fail(f"{word[:30]!r} means nothing in an option line", line, column)
 
     def number(self, text: str, line: int, column: int) -> float:
-        try:
-            value = float(text)
-        except ValueError:
-            raise self.fail(
-                f"{text[:30]!r} is not a number", line, column, "Is this a Touchstone file?"
-            ) from None
-        if not np.isfinite(value):
+        if _NOT_FINITE.fullmatch(text):
             raise self.fail(
                 f"{text!r} is not a finite number", line, column, "The reading failed there; read it again."
             )
+        if _NUMBER.fullmatch(text) is None:
+            raise self.fail(f"{text[:30]!r} is not a number", line, column, "Is this a Touchstone file?")
+        value = float(text)
+        if not np.isfinite(value):
+            raise self.fail(f"{text[:30]!r} is too large to be a reading", line, column)
         return value
 
     def finish(self, line: int) -> TouchstoneData:
         if not self.rows:
-            raise self.fail("holds no data", max(line, 1))
+            raise self.fail("holds no data", line)
         table = np.array(self.rows)
         first, second = table[:, 1::2], table[:, 2::2]
+        values = np.empty(first.shape, np.complex128)
         if self.form == "ri":
-            values = first + 1j * second
+            values.real, values.imag = first, second  # not "+ 1j": that would lose the sign of zero
         else:
-            magnitude = 10.0 ** (first / 20.0) if self.form == "db" else first
-            values = magnitude * np.exp(1j * np.radians(second))
-        if self.ports == 1:
-            s = values[:, :, np.newaxis]
-        else:  # version 1 writes 11, 21, 12, 22
-            s = values[:, [0, 2, 1, 3]].reshape(-1, 2, 2)
+            with np.errstate(over="ignore", invalid="ignore"):
+                magnitude = 10.0 ** (first / 20.0) if self.form == "db" else first
+                values[:] = magnitude * np.exp(1j * np.radians(second))
+            if not np.isfinite(values).all():
+                raise self.fail("holds a magnitude too large to be a reading", line)
+        order = [0] if self.ports == 1 else [0, 2, 1, 3]  # version 1 writes 11, 21, 12, 22
+        s = values[:, order].reshape(-1, self.ports, self.ports)
         return TouchstoneData(table[:, 0], s, self.z0)
 
 
 def _read_version_2(text: str, name: str) -> TouchstoneData:
     import io
+    import warnings
 
     import skrf
 
-    if re.search(r"^\s*\[mixed-mode order\]", text, re.I | re.M):
-        raise InputError(
-            Problem("holds mixed-mode parameters", name, advice="Convert it to single-ended two-port data.")
-        )
-    if not re.search(r"^\s*\[network data\]", text, re.I | re.M):
-        raise InputError(Problem("has no [Network Data]", name, advice="The file is cut off."))
+    def fail(message: str, advice: str = "") -> InputError:
+        return InputError(Problem(message, name, advice=advice))
+
+    if re.search(r"^[ \t]*\[mixed-mode order\]", text, re.I | re.M):
+        raise fail("holds mixed-mode parameters", "Convert it to single-ended two-port data.")
+    # Looked at before scikit-rf does, since it would set aside memory for any number.
+    ports = re.search(r"^[ \t]*\[number of ports\][ \t]*(\S{1,30})", text, re.I | re.M)
+    if ports is None or ports[1] not in ("1", "2"):
+        found = f"{ports[1]!r} ports" if ports else "no [Number of Ports]"
+        raise fail(f"has {found}", "One or two ports at one reference resistance are needed.")
+    if not re.search(r"^[ \t]*\[network data\]", text, re.I | re.M):
+        raise fail("has no [Network Data]", "The file is cut off.")
     stream = io.StringIO(text)
-    stream.name = name if name.lower().endswith(".ts") else name + ".ts"
+    stream.name = "data.ts"  # scikit-rf takes the version from it, and nothing else
     try:
-        network = skrf.Network()
-        network.read_touchstone(stream)
+        with warnings.catch_warnings(), np.errstate(all="ignore"):
+            warnings.simplefilter("ignore")  # what it warns of is checked below
+            network = skrf.Network()
+            network.read_touchstone(stream)
+            f_hz, s = network.f.astype(np.float64), network.s.astype(np.complex128)
+            z0 = np.unique(network.z0)
     except Exception as error:  # scikit-rf has no error class of its own
-        raise InputError(
-            Problem(f"cannot be read as Touchstone 2: {type(error).__name__} {error}", name)
-        ) from error
-    z0 = np.unique(network.z0)
-    if network.nports > 2 or len(z0) > 1:
-        raise InputError(Problem(f"has {network.nports} ports at {np.array2string(z0.real)} ohm", name,
-                                 advice="One or two ports at one reference resistance are needed."))  # fmt: skip
-    return TouchstoneData(network.f.astype(np.float64), network.s.astype(np.complex128), float(z0[0].real))
+        raise fail(f"cannot be read as Touchstone 2: {type(error).__name__} {error}"[:300]) from error
+    if len(z0) != 1 or not z0[0].real > 0 or not np.isfinite(z0[0]):
+        raise fail(f"has its ports at {np.array2string(z0.real)} ohm", "One reference resistance is needed.")
+    if s.shape != (len(f_hz), int(ports[1]), int(ports[1])) or not len(f_hz):
+        raise fail("holds no whole set of data", "The file is cut off.")
+    counted = re.search(r"^[ \t]*\[number of frequencies\][ \t]*([0-9]{1,9})\b", text, re.I | re.M)
+    if counted is None or int(counted[1]) != len(f_hz):
+        said = counted[1] if counted else "nothing"
+        raise fail(f"holds {len(f_hz)} frequencies where [Number of Frequencies] says {said}")
+    if not (np.isfinite(f_hz).all() and np.isfinite(s).all()):
+        raise fail("holds a value that is not a finite number", "The reading failed there; read it again.")
+    if f_hz[0] < 0 or np.any(np.diff(f_hz) <= 0):
+        raise fail("has frequencies that do not increase", "Frequencies must be in rising order.")
+    return TouchstoneData(f_hz, s, float(z0[0].real))
 
 
 def write(
