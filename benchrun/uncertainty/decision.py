@@ -49,7 +49,7 @@ class Conclusion(StrEnum):
 
 
 def worst(conclusions: Iterable[Conclusion]) -> Conclusion:
-    """The worst of several; nothing judged is invalid, for nothing was shown.
+    """Pick the worst of several; nothing judged is invalid, for nothing was shown.
 
     Examples
     --------
@@ -118,7 +118,8 @@ def conclude(value: float, limit: float, side: str, expanded: float | None, rule
     side
         ``"at most"`` or ``"at least"``.
     expanded
-        Expanded uncertainty U (k = 2), not negative; None where none is declared.
+        Expanded uncertainty U (k = 2), not negative; None where none is declared. One that is not
+        finite could not be worked out, and then nothing is concluded.
     rule
         The rule.
 
@@ -136,7 +137,8 @@ def conclude(value: float, limit: float, side: str, expanded: float | None, rule
     'conditional pass'
     """
     margin = limit - value if side == "at most" else value - limit
-    if not math.isfinite(margin) or (expanded is None and rule.factor != 0):
+    unknown = rule.factor != 0 if expanded is None else not math.isfinite(expanded)
+    if unknown or not math.isfinite(margin):
         return Verdict(Conclusion.INVALID, margin, math.nan, None)
     width = rule.factor * (expanded or 0.0)
     if rule.kind == "non-binary":
@@ -158,5 +160,6 @@ def _risk(margin: float, expanded: float | None, accepted: bool) -> float | None
         return None
     if expanded == 0:
         return float(accepted != (margin >= 0))
-    conforms = 0.5 * math.erfc(-margin / (expanded / COVERAGE_FACTOR) / math.sqrt(2.0))
-    return 1.0 - conforms if accepted else conforms
+    # The tail itself, never one less its complement: small risks keep their digits.
+    distance = margin / (expanded / COVERAGE_FACTOR) / math.sqrt(2.0)
+    return 0.5 * math.erfc(distance if accepted else -distance)

@@ -94,7 +94,7 @@ class ResidualTerms:
         return any(getattr(self, f.name) > 0 for f in fields(self))
 
     def vary(self, nominal: TwoPort | ComplexArray, noise: TwoPort | ComplexArray) -> TwoPort | ComplexArray:
-        """The corrected reading under each influence, one after the other.
+        """Step the corrected reading by each influence, one after the other.
 
         Parameters
         ----------
@@ -120,7 +120,7 @@ class ResidualTerms:
         return TwoPort(*(np.concatenate([a, b]) for a, b in zip(stepped.planes, noisy, strict=True)))
 
     def first_order(self, s: TwoPort) -> tuple[FloatArray, FloatArray]:
-        """Standard uncertainty of one component of S11 and S21, by the formulas above.
+        """Estimate the standard uncertainty of one component of S11 and S21, by the formulas above.
 
         Parameters
         ----------
@@ -130,12 +130,15 @@ class ResidualTerms:
         Returns
         -------
         u_s11, u_s21
-            ``(f,)``, linear. Root sum of squares; each magnitude over the square root of two.
+            ``(f,)``, linear. Root sum of squares; each magnitude over the square root of two. The
+            reflection of a connection stands on both its sides, so the near one adds to directivity and
+            source match at once, and the far one to load match.
         """
         a11, a21, a22, loop = np.abs(s.s11), np.abs(s.s21), np.abs(s.s22), np.abs(s.s21 * s.s12)
         r11 = (
             self.directivity**2
-            + self.repeatability**2
+            + (self.repeatability * np.abs(1.0 + s.s11**2)) ** 2
+            + (self.repeatability * loop) ** 2
             + (self.reflection_tracking * a11) ** 2
             + (self.source_match * a11**2) ** 2
             + (self.load_match * loop) ** 2
@@ -147,7 +150,8 @@ class ResidualTerms:
             + (self.load_match * a22 * a21) ** 2
             + self.isolation**2
             + (self.noise_floor + self.trace_noise * a21) ** 2
-            + 2.0 * (self.repeatability * a11 * a21) ** 2
+            + (self.repeatability * a11 * a21) ** 2
+            + (self.repeatability * a22 * a21) ** 2
         )
         return np.sqrt(r11 / 2.0), np.sqrt(r21 / 2.0)
 
@@ -211,7 +215,7 @@ class ResidualTerms:
                 step = complex(size * unit * axis)
                 terms = OnePortTerms(
                     np.asarray(step if index < 2 else 0.0),
-                    np.asarray(step if index == 2 else 0.0),
+                    np.asarray(step if index in (1, 2) else 0.0),  # a connection is seen from both sides
                     np.asarray(1.0 + (step if index == 3 else 0.0)),
                 )
                 rows.append(terms.embed(nominal))
