@@ -1,0 +1,102 @@
+"""Small files that appear whole: keys and trust entries."""
+
+from __future__ import annotations
+
+import os
+import secrets
+from pathlib import Path
+
+from benchrun.errors import RecordError
+
+__all__ = ["place_new", "place_over"]
+
+
+def place_new(path: Path, content: bytes, *, private: bool = False) -> bool:
+    """Put a file where none is.
+
+    Parameters
+    ----------
+    path
+        The file; its folder is made if missing, for the user alone.
+    content
+        All of it.
+    private
+        Whether only the user may read it.
+
+    Returns
+    -------
+    bool
+        False if there was one already; it is left as it is.
+
+    Raises
+    ------
+    RecordError
+        If the system refuses.
+    """
+    work = _write_beside(path, content, 0o600 if private else 0o644)
+    try:
+        # A link fails if the name is taken, where a rename would overwrite on POSIX.
+        path.hardlink_to(work)
+    except FileExistsError:
+        return False
+    except OSError:
+        return _create(path, content, 0o600 if private else 0o644)
+    finally:
+        work.unlink(missing_ok=True)
+    return True
+
+
+def place_over(path: Path, content: bytes) -> None:
+    """Put a file, in the place of a former one if there is one.
+
+    Raises
+    ------
+    RecordError
+        If the system refuses.
+    """
+    work = _write_beside(path, content, 0o644)
+    try:
+        work.replace(path)
+    except OSError as error:
+        work.unlink(missing_ok=True)
+        raise _refused(path, error) from error
+
+
+def _write_beside(path: Path, content: bytes, mode: int) -> Path:
+    work = path.with_name(f".{path.name}.{secrets.token_hex(6)}")
+    try:
+        path.parent.mkdir(parents=True, exist_ok=True, mode=0o700)
+        _write_exclusive(work, content, mode)
+    except OSError as error:
+        raise _refused(path, error) from error
+    return work
+
+
+def _create(path: Path, content: bytes, mode: int) -> bool:
+    """The way for file systems without links: still only one of two writers wins."""
+    try:
+        _write_exclusive(path, content, mode)
+    except FileExistsError:
+        return False
+    except OSError as error:
+        raise _refused(path, error) from error
+    return True
+
+
+def _write_exclusive(path: Path, content: bytes, mode: int) -> None:
+    handle = os.open(path, os.O_WRONLY | os.O_CREAT | os.O_EXCL | getattr(os, "O_BINARY", 0), mode)
+    try:
+        with os.fdopen(handle, "wb") as file:
+            file.write(content)
+            file.flush()
+            os.fsync(file.fileno())
+    except OSError:
+        path.unlink(missing_ok=True)
+        raise
+
+
+def _refused(path: Path, error: OSError) -> RecordError:
+    return RecordError(
+        f"{path} could not be written: {error.strerror or error}; see that the folder can be written, or "
+        "name another one in the environment variable BENCHRUN_HOME"
+    )
