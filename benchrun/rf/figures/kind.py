@@ -86,8 +86,8 @@ class FigureKind:
         +1 if the value is ``+20 log10`` of one magnitude, -1 if it is ``-20 log10`` of one, else 0. Such a
         value's uncertainty is found in the magnitude, where it is linear, and then turned into dB.
     between
-        ``(f_hz, network, where_hz, **parameters) -> (..., k)`` for a trace figure that can be taken between
-        samples; without it the trace is interpolated.
+        ``(f_hz, network, where_hz, **parameters) -> (..., k)`` in place of ``trace``, for a trace figure
+        that can be taken between samples; a ``trace`` is interpolated there.
     """
 
     name: str
@@ -163,5 +163,5 @@ class FigureKind:
         if self.between is not None:
             where = samples(f_hz, *band)
             return where, self.between(f_hz, network, where, **rest)
-        assert self.trace is not None  # a kind has a trace or a scalar, see the table's test
+        assert self.trace is not None  # a kind has exactly one way, see the table's test
         return in_band(f_hz, self.trace(f_hz, network, **rest), *band)

@@ -50,10 +50,6 @@ def group_delay(
     return np.asarray(np.where(inside, -step / (2.0 * np.pi * aperture), np.nan))
 
 
-def _group_delay_trace(f_hz: FloatArray, network: TwoPort, aperture: float, trace: str = "S21") -> FloatArray:
-    return group_delay(f_hz, network, f_hz, aperture, trace)
-
-
 def _phase(_f_hz: FloatArray, network: TwoPort, trace: str = "S21") -> FloatArray:
     return np.asarray(np.degrees(np.unwrap(np.angle(transmission(network, trace)), axis=-1)))
 
@@ -72,7 +68,6 @@ KINDS = (
         Dimension.TIME,
         "phase difference over `aperture`, divided by 2 pi times the aperture, at every sample of the band",
         {"over": _OVER, "at": _AT, "aperture": _APERTURE, "trace": _TRACE},
-        trace=_group_delay_trace,
         reach_hz="aperture",
         between=group_delay,
     ),
