@@ -6,16 +6,18 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchrun.errors import BenchError, DeadlineExceeded, InvalidMeasurement, ReplyError
+from benchrun.errors import BenchError, DeadlineExceeded, InputError, InvalidMeasurement, ReplyError
 from benchrun.instruments.dialect import Dialect
 from benchrun.quantity import Dimension, render
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
+from benchrun.scpi.keywords import compound
 from benchrun.scpi.session import Session
 
 __all__ = ["NetworkAnalyzer", "Readings", "SweepSettings"]
 
 _POLLS_PER_SWEEP = 20
 _FORGIVENESS_S = 5.0
+_SINGLE = 2e-7  # 32-bit numbers, and text of seven digits
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -88,20 +90,26 @@ class NetworkAnalyzer:
 
         Raises
         ------
+        InputError
+            If the dialect has no words for such a sweep.
         InstrumentError, TransportError, ReplyError
         """
         words = self.dialect.sweep
-        spacing = {"linear": words.linear, "log": words.log, "list": ()}[settings.spacing]
-        messages = (*(words.listed if settings.spacing == "list" else words.span), *spacing, *words.common)
+        listed = settings.spacing == "list" or (settings.spacing == "log" and not words.log)
+        if listed and not words.listed:
+            raise InputError(
+                f"the dialect {self.dialect.dialect} has no words for a {settings.spacing} sweep; "
+                "write a linear sweep, or add them to the dialect file"
+            )
+        spacing = () if listed else words.log if settings.spacing == "log" else words.linear
+        messages = (*(words.listed if listed else words.span), *spacing, *words.common)
         values = {
             "start_hz": repr(float(settings.grid_hz[0])),
             "stop_hz": repr(float(settings.grid_hz[-1])),
             "points": len(settings.grid_hz),
-            "list_hz": ",".join(repr(x) for x in settings.grid_hz.tolist())
-            if settings.spacing == "list"
-            else "",
-            "bandwidth_hz": f"{settings.bandwidth_hz:g}",
-            "power_dbm": f"{settings.power_dbm:g}",
+            "list_hz": ",".join(repr(x) for x in settings.grid_hz.tolist()) if listed else "",
+            "bandwidth_hz": f"{settings.bandwidth_hz:.12g}",
+            "power_dbm": f"{settings.power_dbm:.12g}",
             "averages": settings.averages,
             "averaging": "ON" if settings.averages > 1 else "OFF",
         }
@@ -132,39 +140,51 @@ class NetworkAnalyzer:
             raise RuntimeError("set_up() comes before sweep()")
         self._trigger(settings)
         raw = self._read(settings)
-        self.session.raise_errors("reading")
+        grid = self._grid(settings)
+        self.session.raise_errors(self.dialect.read.values)
         self._judge_health()
         self._judge_readings(raw, settings)
         self._last = raw, settings
-        return Readings(self._grid(settings), raw)
+        return Readings(grid, raw)
 
     def _trigger(self, settings: SweepSettings) -> None:
         words = self.dialect.trigger
-        message = ";:".join(words.start)
+        message = compound(*words.start)
         if words.wait == "operation complete":
             self.session.complete(message, settings.deadline_s)
-            return
+        else:
+            self._poll(message, settings)
+        self.session.raise_errors(message)
+
+    def _poll(self, message: str, settings: SweepSettings) -> None:
+        words = self.dialect.trigger
         self.session.write(message)
         clock, start = self.session.clock, self.session.clock.seconds()
         assert words.condition is not None  # the dialect says so with wait: condition
         while int(self.session.query_float(words.condition)) & (1 << words.bit):
             if clock.seconds() - start > settings.deadline_s:
-                raise DeadlineExceeded(f"is still sweeping after {settings.deadline_s:.3g} s", resource=self.session.name,
-                                       request=message, elapsed_s=clock.seconds() - start, limit_s=settings.deadline_s)  # fmt: skip
+                raise DeadlineExceeded(
+                    f"is still sweeping after {settings.deadline_s:.3g} s; reset it and run again",
+                    resource=self.session.name,
+                    request=message,
+                    elapsed_s=clock.seconds() - start,
+                    limit_s=settings.deadline_s,
+                )
             clock.wait(settings.expected_s / _POLLS_PER_SWEEP)
 
     def _read(self, settings: SweepSettings) -> TwoPort:
         words, count = self.dialect.read, len(settings.grid_hz)
         planes: dict[str, ComplexArray] = {}
         if words.how == "all at once":
-            values = self.session.query_values(words.values, words.form, 8 * count).reshape(count, 4, 2)
+            matrix = self.session.query_values(words.values, words.form, 8 * count).reshape(count, 4, 2)
             for i, name in enumerate(words.order):
-                planes[name] = np.ascontiguousarray(values[:, i, 0] + 1j * values[:, i, 1])
+                planes[name] = np.ascontiguousarray(matrix[:, i, 0] + 1j * matrix[:, i, 1])
         else:
             for name in words.order:
                 if words.select:
                     self.session.set(words.select.format(receiver=name[1], source=name[2]))
-                values = self.session.query_values(words.values, words.form, 2 * count).reshape(count, 2)
+                request = words.values.format(receiver=name[1], source=name[2])
+                values = self.session.query_values(request, words.form, 2 * count).reshape(count, 2)
                 planes[name] = np.ascontiguousarray(values[:, 0] + 1j * values[:, 1])
         return TwoPort(planes["S11"], planes["S12"], planes["S21"], planes["S22"])
 
@@ -173,21 +193,25 @@ class NetworkAnalyzer:
         if words.grid is None:
             return settings.grid_hz
         grid = self.session.query_values(words.grid, words.form, len(settings.grid_hz))
-        worst = float(np.max(np.abs(grid - settings.grid_hz) / settings.grid_hz))
-        if worst > 1e-9:
-            i = int(np.argmax(np.abs(grid - settings.grid_hz)))
+        off = np.abs(grid - settings.grid_hz) / settings.grid_hz
+        if not np.all(off <= (1e-9 if "64" in words.form else _SINGLE)):  # so that nan is off, too
+            i = int(np.argmax(off))
             raise InvalidMeasurement(
-                f"{self.session.name} swept another grid: point {i + 1} lies at {grid[i]:.6g} Hz, asked was {settings.grid_hz[i]:.6g} Hz.",
+                f"{self.session.name} swept another grid: point {i + 1} lies at {grid[i]:.9g} Hz, "
+                f"asked was {settings.grid_hz[i]:.9g} Hz.",
                 "Reset the analyzer and run again.",
             )
         return settings.grid_hz
 
     def _judge_health(self) -> None:
         for trouble in self.health():
-            raise InvalidMeasurement(f"{self.session.name} reports {trouble} in this sweep.", {
-                "an overload": "Lower the source power or put a pad before the port, then read again.",
-                "an unlocked reference": "Check the reference signal and the warm-up, then read again.",
-            }[trouble])  # fmt: skip
+            raise InvalidMeasurement(
+                f"{self.session.name} reports {trouble} in this sweep.",
+                {
+                    "an overload": "Lower the source power or put a pad before the port, then read again.",
+                    "an unlocked reference": "Check the reference signal and the warm-up, then read again.",
+                }[trouble],
+            )
 
     def health(self) -> list[str]:
         """Conditions that spoil readings, in words; empty when all is well.
@@ -211,13 +235,18 @@ class NetworkAnalyzer:
             bad = ~np.isfinite(plane) | (np.abs(plane) > 1e6)  # 9.91E37 is SCPI's way to write "no number"
             if bad.any():
                 where = render(float(settings.grid_hz[int(np.argmax(bad))]), Dimension.FREQUENCY)
-                raise InvalidMeasurement(f"{self.session.name} gave no number for {name} at {where} ({int(bad.sum())} points).",
-                                         "Read again; if it stays, the receiver is faulty.")  # fmt: skip
+                raise InvalidMeasurement(
+                    f"{self.session.name} gave no number for {name} at {where} ({int(bad.sum())} points).",
+                    "Read again; if it stays, the receiver is faulty.",
+                )
         if self._last is not None and self._last[1] is settings:
             before = self._last[0]
             if all(np.array_equal(a, b) for a, b in zip(raw.planes, before.planes, strict=True)):
-                raise InvalidMeasurement(f"{self.session.name} gave the very same readings as before, digit for digit: they are stale.",
-                                         "Trigger a new sweep; if it stays, reset the analyzer.")  # fmt: skip
+                raise InvalidMeasurement(
+                    f"{self.session.name} gave the very same readings as before, digit for digit: "
+                    "they are stale.",
+                    "Trigger a new sweep; if it stays, reset the analyzer.",
+                )
 
     def make_safe(self) -> str:
         """Source off, as far as the line allows.

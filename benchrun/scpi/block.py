@@ -20,7 +20,16 @@ BLOCK_FORMS = {
 """numpy types by the standard's words (SCPI-1999 FORMat, BORDer)."""
 
 
-def read_block(take: Callable[[int], bytes], rest: Callable[[], bytes], resource: str, request: str) -> bytes:
+_LONGEST = 1 << 28
+
+
+def read_block(
+    take: Callable[[int], bytes],
+    rest: Callable[[], bytes],
+    garbage: Callable[[], bytes],
+    resource: str,
+    request: str,
+) -> bytes:
     """Read one block, by its header and the exact count.
 
     Parameters
@@ -29,6 +38,8 @@ def read_block(take: Callable[[int], bytes], rest: Callable[[], bytes], resource
         Returns exactly so many bytes.
     rest
         Returns all up to the end of the message, with its terminator: for an indefinite block.
+    garbage
+        Returns what else has come, where the answer is no block: for the complaint.
     resource, request
         For complaints.
 
@@ -44,21 +55,29 @@ def read_block(take: Callable[[int], bytes], rest: Callable[[], bytes], resource
     FramingError
         If the block is not followed by the terminator.
     """
-    head = take(2)
-    if head[:1] != b"#" or not head[1:].isdigit():
-        raise ReplyError(head.decode("latin-1"), "a data block (#...)", resource=resource, request=request)
+    head = take(1)
+    if head == b"#":
+        head += take(1)
+    if len(head) != 2 or not head[1:].isdigit():
+        said = (head + garbage()).rstrip(b"\r\n").decode("latin-1") if head != b"\n" else ""
+        raise ReplyError(said, "a data block (#...)", resource=resource, request=request)
     digits = int(head[1:])
     if digits == 0:
-        return rest().removesuffix(b"\n")
+        return _unframed(rest(), "an indefinite block", resource, request)
     length = take(digits)
-    if not length.isdigit():
-        raise ReplyError(
-            (head + length).decode("latin-1"), "a block length", resource=resource, request=request
-        )
-    data = take(int(length) + 1)
+    if not length.isdigit() or int(length) > _LONGEST:
+        said = (head + length).decode("latin-1")
+        raise ReplyError(said, f"a block length up to {_LONGEST:,}", resource=resource, request=request)
+    return _unframed(take(int(length) + 1), f"a block of {int(length)} bytes", resource, request)
+
+
+def _unframed(data: bytes, what: str, resource: str, request: str) -> bytes:
     if data[-1:] != b"\n":
-        raise FramingError(f"announced a block of {int(length)} bytes, but byte {int(length) + 1} is {data[-1:]!r} and not the "
-                           "end of the message", resource=resource, request=request)  # fmt: skip
+        raise FramingError(
+            f"sent {what}, but the byte after it is {data[-1:]!r} and not the end of the message",
+            resource=resource,
+            request=request,
+        )
     return data[:-1]
 
 

@@ -9,18 +9,40 @@ from pyvisa import constants, errors
 
 from benchrun.errors import ConnectionLost, DeadlineExceeded, FramingError, ResourceNotFound, TransportError
 
-__all__ = ["CODES", "is_dead", "translate"]
+__all__ = ["CODES", "first_line", "is_dead", "translate"]
 
 _S = constants.StatusCode
-_NOT_FOUND = {_S.error_resource_not_found, _S.error_invalid_resource_name, _S.error_library_not_found,
-              _S.error_interface_number_not_configured, _S.error_machine_not_available,
-              _S.error_resource_locked, _S.error_no_permission}  # fmt: skip
-_LOST = {_S.error_connection_lost, _S.error_io, _S.error_no_listeners, _S.error_not_cic, _S.error_system_error,
-         _S.error_invalid_object, _S.error_session_not_locked, _S.error_closing_failed,
-         _S.error_controller_in_charge_nack}  # fmt: skip
-_FRAMING = {_S.error_asrl_framing, _S.error_asrl_overrun, _S.error_asrl_parity, _S.error_output_protocol_violation,
-            _S.error_input_protocol_violation, _S.error_raw_write_protocol_violation,
-            _S.error_raw_read_protocol_violation, _S.error_bus_error, _S.error_invalid_format}  # fmt: skip
+_NOT_FOUND = {
+    _S.error_resource_not_found,
+    _S.error_invalid_resource_name,
+    _S.error_library_not_found,
+    _S.error_interface_number_not_configured,
+    _S.error_machine_not_available,
+    _S.error_resource_locked,
+    _S.error_no_permission,
+}
+_LOST = {
+    _S.error_connection_lost,
+    _S.error_io,
+    _S.error_no_listeners,
+    _S.error_not_cic,
+    _S.error_system_error,
+    _S.error_invalid_object,
+    _S.error_session_not_locked,
+    _S.error_closing_failed,
+    _S.error_not_system_controller,
+}
+_FRAMING = {
+    _S.error_serial_framing,
+    _S.error_serial_overrun,
+    _S.error_serial_parity,
+    _S.error_output_protocol_violation,
+    _S.error_input_protocol_violation,
+    _S.error_raw_write_protocol_violation,
+    _S.error_raw_read_protocol_violation,
+    _S.error_bus_error,
+    _S.error_invalid_format,
+}
 
 CODES: dict[int, type[TransportError]] = {
     **dict.fromkeys(_NOT_FOUND, ResourceNotFound),
@@ -35,7 +57,7 @@ CODES: dict[int, type[TransportError]] = {
 def translate(
     error: Exception, resource: str, request: str, elapsed_s: float = 0.0, limit_s: float = 0.0
 ) -> TransportError:
-    """What a lower error means here.
+    """Say what a lower error means here.
 
     Parameters
     ----------
@@ -67,6 +89,11 @@ def translate(
         ConnectionLost: "check the cable and the power, then run again",
     }.get(kind, "run again; if it stays, look at the transcript in the record")
     return kind(f"{said}; {advice}", resource=resource, request=request)
+
+
+def first_line(error: Exception) -> str:
+    """Give the first line of an error's text, or its kind where it has none."""
+    return (str(error).splitlines() or [type(error).__name__])[0]
 
 
 def is_dead(resource: Any) -> bool:

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import re
 
-__all__ = ["matches", "short_form"]
+__all__ = ["compound", "matches", "short_form"]
 
 _HEAD = re.compile(r"([A-Za-z]+)(\d*)")
 
 
 def short_form(keyword: str) -> str:
-    """The short form: four letters, or three where the fourth is a vowel of a longer word.
+    """Give the short form: four letters, or three where the fourth is a vowel of a longer word.
 
     Examples
     --------
@@ -24,7 +24,7 @@ def short_form(keyword: str) -> str:
 
 
 def matches(keyword: str, written: str) -> int | None:
-    """The numeric suffix if ``written`` is a keyword in exact short or long form, else None.
+    """Give the numeric suffix if ``written`` is a keyword in exact short or long form, else None.
 
     Examples
     --------
@@ -35,3 +35,20 @@ def matches(keyword: str, written: str) -> int | None:
     if head is None or head[1].upper() not in (short_form(keyword), keyword.upper()):
         return None
     return int(head[2]) if head[2] else 1
+
+
+def compound(*units: str) -> str:
+    """Join program message units so that each starts from the root of the tree.
+
+    After ``;`` the path stays where it was unless ``:`` leads; a common command takes no ``:`` and moves no
+    path (SCPI-1999 Volume 1, 6.2.4; IEEE 488.2, 7.6.1; from memory).
+
+    Examples
+    --------
+    >>> compound("*RST", "INIT:CONT OFF", ":SENS:FREQ:STAR 1 MHZ", "*CLS")
+    '*RST;:INIT:CONT OFF;:SENS:FREQ:STAR 1 MHZ;*CLS'
+    """
+    first, *others = units
+    joined = [first.removeprefix(":")]
+    joined += [unit if unit.startswith(("*", ":")) else f":{unit}" for unit in others]
+    return ";".join(joined)
