@@ -44,7 +44,9 @@ class Instrument(FileModel):
     library: str = Field(default="", description='VISA library; empty for the system\'s, "@py" for pyvisa-py')
     dialect: Name
     identity: Expected = Expected()
-    ports: dict[Literal[1, 2], Port] = Field(default_factory=dict)
+    ports: dict[Literal[1, 2], Port] = Field(
+        default_factory=dict, json_schema_extra={"propertyNames": {"enum": ["1", "2"]}}
+    )
     range: Range | None = None
 
 

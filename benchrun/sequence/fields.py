@@ -11,9 +11,28 @@ from pydantic_core import PydanticCustomError
 from benchrun.quantity import Dimension, parse, parse_range
 
 __all__ = [
-    "Capacitance", "Decibel", "Delay", "Duration", "FileModel", "Frequency", "FrequencyRange", "Impedance",
-    "Inductance", "Listed", "LossRate", "Name", "Power", "PowerRange", "Voltage", "trouble",
-]  # fmt: skip
+    "LABEL",
+    "Capacitance",
+    "Decibel",
+    "Delay",
+    "Duration",
+    "FileModel",
+    "Frequency",
+    "FrequencyRange",
+    "Impedance",
+    "Inductance",
+    "Listed",
+    "LossRate",
+    "Name",
+    "Power",
+    "PowerRange",
+    "Voltage",
+    "trouble",
+]
+
+
+HIGHEST_HZ = 1e13
+"""Far above any RF part; beyond lies a slip of the prefix."""
 
 
 class FileModel(BaseModel):
@@ -27,9 +46,9 @@ class FileModel(BaseModel):
 def _schema(dimension: Dimension, ranged: bool = False) -> WithJsonSchema:
     example = dimension.example
     number = r"[+-]?[0-9.]+([eE][+-]?[0-9]+)?"
-    prefix = "[fpnuµmkMGT]?" if dimension.scaled else ""
-    unit = {"s": "(s|min|h|d)"}.get(dimension.unit, re.escape(dimension.unit))
-    one = rf"{number} *{prefix}{unit}"
+    prefix = "[fpnuµμmkMGT]?" if dimension.scaled else ""
+    others = "".join(f"|{re.escape(other)}" for other in _OTHER_SPELLINGS.get(dimension.unit, ()))
+    one = rf"{number} *({prefix}{re.escape(dimension.unit)}{others})"
     return WithJsonSchema(
         {
             "type": "string",
@@ -40,19 +59,34 @@ def _schema(dimension: Dimension, ranged: bool = False) -> WithJsonSchema:
     )
 
 
+_OTHER_SPELLINGS = {
+    "s": ("sec", "min", "h", "d"), "ohm": ("Ω", "ohms", "Ohm"), "deg": ("°",), "degC": ("°C",),
+    "N m": ("Nm", "N*m"),
+}  # fmt: skip
+
+
+def _range(text: Any, dimension: Dimension) -> tuple[float, float]:
+    low, high = parse_range(text, dimension)
+    if dimension is Dimension.FREQUENCY and not 0.0 <= low < high <= HIGHEST_HZ:
+        raise ValueError(f"{text!r} is no range of frequencies; they lie from 0 Hz to {HIGHEST_HZ:g} Hz")
+    return low, high
+
+
 def _value(dimension: Dimension) -> Any:
     return BeforeValidator(lambda text: parse(text, dimension))
 
 
-Frequency = Annotated[float, Field(ge=0), _value(Dimension.FREQUENCY), _schema(Dimension.FREQUENCY)]
+Frequency = Annotated[
+    float, Field(ge=0, le=HIGHEST_HZ), _value(Dimension.FREQUENCY), _schema(Dimension.FREQUENCY)
+]
 FrequencyRange = Annotated[
     tuple[float, float],
-    BeforeValidator(lambda text: parse_range(text, Dimension.FREQUENCY)),
+    BeforeValidator(lambda text: _range(text, Dimension.FREQUENCY)),
     _schema(Dimension.FREQUENCY, True),
 ]
 PowerRange = Annotated[
     tuple[float, float],
-    BeforeValidator(lambda text: parse_range(text, Dimension.POWER)),
+    BeforeValidator(lambda text: _range(text, Dimension.POWER)),
     _schema(Dimension.POWER, True),
 ]
 Power = Annotated[float, Field(ge=-200, le=100), _value(Dimension.POWER), _schema(Dimension.POWER)]
@@ -73,10 +107,13 @@ def _as_tuple(value: object) -> object:
     return tuple(value) if isinstance(value, list) else value
 
 
+LABEL = "\x1f"
+"""Begins the labels of alternatives, so that no key of a file can be taken for one (see ``loading``)."""
+
 Listed = BeforeValidator(_as_tuple)
 """Put on tuple fields: a file writes lists, a frozen model keeps tuples."""
 
 
 def trouble(message: str, key: str = "") -> PydanticCustomError:
-    """An error of a whole model that still points at one of its keys."""
+    """Make an error of a whole model that still points at one of its keys."""
     return PydanticCustomError("benchrun", "{message}", {"message": message, "key": key})

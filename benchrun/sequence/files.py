@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import difflib
 import re
-from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Generic, TypeVar
@@ -14,6 +13,7 @@ from pydantic_core import ErrorDetails
 
 from benchrun.errors import InputError, Problem
 from benchrun.sequence.bench import Bench
+from benchrun.sequence.fields import LABEL
 from benchrun.sequence.kit import KitFile
 from benchrun.sequence.loading import Document, load, read_bytes
 from benchrun.sequence.mask import MaskFile
@@ -26,6 +26,7 @@ M = TypeVar("M", bound=BaseModel)
 
 KINDS: dict[str, type[BaseModel]] = {"sequence": Sequence, "bench": Bench, "kit": KitFile, "mask": MaskFile}
 """Kind of file by its first key."""
+_MOST_PROBLEMS = 50
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,9 +88,15 @@ def kind_of(document: Document) -> str:
         for kind in KINDS:
             if kind in document.data:
                 return kind
+    keys = [key for key in document.data if isinstance(key, str)] if isinstance(document.data, dict) else []
+    for key in keys[:20]:
+        close = difflib.get_close_matches(key, KINDS, 1, 0.6)
+        if close:
+            raise InputError(document.problem(f"the key {_short(key)} names no kind of file", (key,),
+                                              f"Did you mean {close[0]!r}?", key=True))  # fmt: skip
     raise InputError(
         document.problem(
-            f"is no {', '.join(KINDS)} file", (), f"It must begin with one of the keys {', '.join(KINDS)}."
+            f"is no {', '.join(KINDS)} file", (), f"It must have one of the keys {', '.join(KINDS)}."
         )
     )
 
@@ -107,48 +114,57 @@ def validate(document: Document, model: type[M]) -> M:
     try:
         return model.model_validate(document.data)
     except ValidationError as error:
-        raise InputError(_problems(document, error)) from None
+        raise InputError(_problems(document, model, error)) from None
 
 
-def _problems(document: Document, error: ValidationError) -> Iterator[Problem]:
-    seen = set()
-    for detail in error.errors(include_url=False):
-        path = _path(document, detail["loc"])
-        problem = _problem(document, detail, path)
-        if problem not in seen:
-            seen.add(problem)
-            yield problem
+def _problems(document: Document, model: type[BaseModel], error: ValidationError) -> list[Problem]:
+    found: dict[Problem, None] = {}
+    details = error.errors(include_url=False, include_input=True)
+    for detail in details[:_MOST_PROBLEMS]:
+        found[_problem(document, model, detail)] = None
+    if len(details) > _MOST_PROBLEMS:
+        found[
+            document.problem(f"has {len(details) - _MOST_PROBLEMS} more problems", advice="Mend these first.")
+        ] = None
+    return sorted(found, key=lambda problem: (problem.line, problem.column))
 
 
 def _path(document: Document, loc: tuple[int | str, ...]) -> tuple[object, ...]:
-    """The part of pydantic's location that exists in the file; union labels are dropped."""
+    """Take the part of pydantic's location that exists in the file; union labels are dropped."""
     path: tuple[object, ...] = ()
     for part in loc:
+        if isinstance(part, str) and part.startswith(LABEL):
+            continue
         if (*path, part) in document.places or ((*path, part), "key") in document.places:
             path = (*path, part)
     return path
 
 
-def _problem(document: Document, detail: ErrorDetails, path: tuple[object, ...]) -> Problem:
+def _problem(document: Document, model: type[BaseModel], detail: ErrorDetails) -> Problem:
+    path = _path(document, detail["loc"])
     kind, value, context = detail["type"], detail["input"], detail.get("ctx") or {}
     key = detail["loc"][-1] if detail["loc"] else ""
     if kind == "extra_forbidden":
-        return _extra(document, path, str(key))
+        return _extra(document, model, path, key)
     if kind == "missing":
         return document.problem(f"lacks the key {key!r}", path, "Add it.")
     if kind == "benchrun":
         inner = (*path, context["key"])
-        return document.problem(str(context["message"]), inner if inner in document.places else path)
+        return document.problem(_clip(str(context["message"])), inner if inner in document.places else path)
     if kind in ("union_tag_invalid", "union_tag_not_found"):
         return _no_step(document, path, context)
     if kind == "value_error":
-        return document.problem(str(context["error"]), path)
+        return document.problem(_clip(str(context["error"])), path)
+    if key == "[key]":
+        return _bad_key(document, path, value, context)
     if kind == "literal_error" and isinstance(value, str):
         close = difflib.get_close_matches(
             value, re.findall(r"'([^']+)'", str(context.get("expected"))), 1, 0.5
         )
         if close:
-            return document.problem(f"{key}: {value!r} is not known", path, f"Did you mean {close[0]!r}?")
+            return document.problem(
+                f"{key}: {_short(value)} is not known", path, f"Did you mean {close[0]!r}?"
+            )
     said = detail["msg"]
     said = said[0].lower() + said[1:]
     return document.problem(
@@ -156,30 +172,40 @@ def _problem(document: Document, detail: ErrorDetails, path: tuple[object, ...])
     )
 
 
-def _extra(document: Document, path: tuple[object, ...], key: str) -> Problem:
+def _extra(document: Document, model: type[BaseModel], path: tuple[object, ...], key: object) -> Problem:
+    from benchrun.sequence.schema import keys_at
+
     siblings = document.data
     for part in path[:-1]:
         siblings = siblings[part]
-    known = _keys_near(document, path[:-1])
-    close = difflib.get_close_matches(key, [k for k in known if k not in siblings], 1, 0.5)
+    known = keys_at(model, document.data, path[:-1])
+    close = difflib.get_close_matches(str(key), [k for k in known if k not in siblings], 1, 0.5)
     advice = f"Did you mean {close[0]!r}?" if close else (f"Known here: {', '.join(known)}." if known else "")
-    return document.problem(f"the key {key!r} means nothing here", path, advice, key=True)
+    return document.problem(f"the key {_short(key)} means nothing here", path, advice, key=True)
 
 
-def _keys_near(document: Document, path: tuple[object, ...]) -> list[str]:
-    """Keys that a schema allows at a path, found by walking the exported schema."""
-    from benchrun.sequence.schema import keys_at
-
-    return keys_at(KINDS[kind_of(document)], document.data, path)
+def _bad_key(document: Document, path: tuple[object, ...], value: object, context: dict[str, Any]) -> Problem:
+    known = re.findall(r"'([^']+)'", str(context.get("expected", "")))
+    close = difflib.get_close_matches(str(value), known, 1, 0.5)
+    advice = f"Did you mean {close[0]!r}?" if close else ""
+    allowed = context.get("expected") or f"text like {context.get('pattern', 'a name')}"
+    return document.problem(
+        f"the key {_short(value)} is not allowed here; write {allowed}", path, advice, key=True
+    )
 
 
 def _no_step(document: Document, path: tuple[object, ...], context: dict[str, Any]) -> Problem:
-    tag = str(context.get("tag", ""))
+    known = f"Known steps: {', '.join(STEP_KINDS)}."
+    if "tag" not in context:
+        return document.problem("a step is one key, its kind, with its settings below", path, known)
+    tag = str(context["tag"]).removeprefix(LABEL)
     close = difflib.get_close_matches(tag, STEP_KINDS, 1, 0.5)
-    advice = f"Did you mean {close[0]!r}?" if close else f"Known steps: {', '.join(STEP_KINDS)}."
-    if " " in tag:
-        return document.problem(tag, path, f"Known steps: {', '.join(STEP_KINDS)}.")
-    return document.problem(f"there is no step {tag!r}", (*path, tag), advice, key=True)
+    advice = f"Did you mean {close[0]!r}?" if close else known
+    return document.problem(f"there is no step {_short(tag)}", (*path, tag), advice, key=True)
+
+
+def _clip(text: str) -> str:
+    return text if len(text) <= 400 else text[:397] + "..."
 
 
 def _short(value: object) -> str:

@@ -24,7 +24,7 @@ def _places(kind: str, beside: Path | None) -> Iterator[Path]:
 
 
 def find(kind: str, name: str, beside: Path | None = None, place: Problem | None = None) -> Path:
-    """The file that a name means.
+    """Find the file that a name means.
 
     Parameters
     ----------
@@ -45,17 +45,24 @@ def find(kind: str, name: str, beside: Path | None = None, place: Problem | None
     ending = "" if kind == "fixture" else ".yaml"
     for folder in (beside, Path()) if beside else (Path(),):
         direct = folder / name
-        if Path(name).suffix and direct.is_file():
+        if Path(name).suffix and _is_file(direct):
             return direct
     for folder in _places(kind, beside):
         candidate = folder / (name if name.endswith(ending) else name + ending)
-        if candidate.is_file():
+        if _is_file(candidate):
             return candidate
     known = [n for n, _ in named(kind, beside)]
     close = difflib.get_close_matches(name, known, 1, 0.5)
     advice = f"Did you mean {close[0]!r}?" if close else f"Known by name: {', '.join(known) or 'none'}."
     at = place or Problem("")
     raise InputError(Problem(f"there is no {kind} {name!r}", at.file, at.line, at.column, advice))
+
+
+def _is_file(path: Path) -> bool:
+    try:
+        return path.is_file()
+    except OSError:  # for example a name that is too long to be one
+        return False
 
 
 def named(kind: str, beside: Path | None = None) -> list[tuple[str, Path]]:

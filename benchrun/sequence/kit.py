@@ -9,8 +9,15 @@ from pydantic import BeforeValidator, Field
 
 from benchrun.rf.kit import Kit, Offset, Standard
 from benchrun.sequence.fields import (
-    Capacitance, Delay, FileModel, FrequencyRange, Impedance, Inductance, LossRate, Name,
-)  # fmt: skip
+    Capacitance,
+    Delay,
+    FileModel,
+    FrequencyRange,
+    Impedance,
+    Inductance,
+    LossRate,
+    Name,
+)
 
 __all__ = ["KitFile"]
 

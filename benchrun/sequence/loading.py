@@ -25,12 +25,24 @@ MAX_BYTES = 1_000_000
 MAX_DEPTH = 40
 
 Place: TypeAlias = tuple[int, int]
+_FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029\ufeff\ufffe\uffff]")
+"""What YAML 1.2.2, 5.1, calls not printable, and line ends that editors and parsers count differently."""
+_SUSPECT = re.compile(f"{_FORBIDDEN.pattern}|\t")
 _INTEGER = re.compile(r"[-+]?[0-9]+")
 _FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _WORDS: dict[str, Any] = {
-    "": None, "~": None, "null": None, "Null": None, "NULL": None,
-    "true": True, "True": True, "TRUE": True, "false": False, "False": False, "FALSE": False,
-}  # fmt: skip
+    "": None,
+    "~": None,
+    "null": None,
+    "Null": None,
+    "NULL": None,
+    "true": True,
+    "True": True,
+    "TRUE": True,
+    "false": False,
+    "False": False,
+    "FALSE": False,
+}
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,9 +79,16 @@ class Document:
             path = path[:-1]
         return self.places.get(path, (1, 1))
 
-    def problem(self, message: str, path: tuple[object, ...] = (), advice: str = "", *, key: bool = False,
-                severity: str = "error") -> Problem:  # fmt: skip
-        """A problem with its place."""
+    def problem(
+        self,
+        message: str,
+        path: tuple[object, ...] = (),
+        advice: str = "",
+        *,
+        key: bool = False,
+        severity: str = "error",
+    ) -> Problem:
+        """Make a problem with its place."""
         line, column = self.place(path, key)
         return Problem(message, self.name, line, column, advice, severity)
 
@@ -89,8 +108,13 @@ def read_bytes(path: Path, limit: int = MAX_BYTES) -> bytes:
         raise InputError(Problem(f"cannot be read: {error.strerror or error}", str(path))) from error
     if len(data) > limit:
         size = path.stat().st_size
-        raise InputError(Problem(f"is {size:,} bytes long, at most {limit:,} are allowed", str(path),
-                                 advice="Is this the right file?"))  # fmt: skip
+        raise InputError(
+            Problem(
+                f"is {size:,} bytes long, at most {limit:,} are allowed",
+                str(path),
+                advice="Is this the right file?",
+            )
+        )
     return data
 
 
@@ -134,13 +158,13 @@ def _text(raw: bytes, name: str) -> str:
                 f"is not UTF-8 text (byte 0x{raw[error.start]:02X})", name, line, column, "Save it as UTF-8."
             )
         ) from None
-    for match in re.finditer(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f\t]", text):
+    for match in _SUSPECT.finditer(text):
         line = text.count("\n", 0, match.start()) + 1
         column = match.start() - text.rfind("\n", 0, match.start())
         tab = match[0] == "\t"
         if tab and text[text.rfind("\n", 0, match.start()) + 1 : match.start()].strip():
             continue  # a tab after content is only ugly
-        what = "a tab in the indentation" if tab else f"the control character 0x{ord(match[0]):02X}"
+        what = "a tab in the indentation" if tab else _control(match[0])
         raise InputError(
             Problem(f"has {what}", name, line, column, "Indent with spaces." if tab else "Remove it.")
         )
@@ -155,8 +179,7 @@ class _Builder:
         self.places: dict[tuple[object, ...], Place] = {}
 
     def fail(self, message: str, event: yaml.Event, advice: str = "") -> InputError:
-        mark = event.start_mark
-        return InputError(Problem(message, self.name, mark.line + 1, mark.column + 1, advice))
+        return InputError(Problem(message, self.name, *_place(event), advice))
 
     def build(self, events: Iterator[yaml.Event]) -> tuple[Any, dict[tuple[object, ...], Place]]:
         root: list[Any] = []
@@ -174,6 +197,8 @@ class _Builder:
             if isinstance(event, yaml.ScalarEvent | yaml.CollectionStartEvent) and _tagged(event):
                 raise self.fail(f"uses the tag {event.tag}", event, "Tags are not used here.")
             if isinstance(event, yaml.ScalarEvent):
+                if event.style and (hidden := _FORBIDDEN.search(event.value)):
+                    raise self.fail(f"hides {_control(hidden[0])} in an escape", event, "Remove it.")
                 value: Any = _scalar(event)
                 self._put(stack, paths, keys, value, event)
             elif isinstance(event, yaml.CollectionStartEvent):
@@ -190,9 +215,15 @@ class _Builder:
                 keys.pop()
         return (root[0] if root else None), self.places
 
-    def _put(self, stack: list[Any], paths: list[tuple[object, ...]], keys: list[Any], value: Any,
-             event: yaml.Event) -> tuple[object, ...]:  # fmt: skip
-        place = (event.start_mark.line + 1, event.start_mark.column + 1)
+    def _put(
+        self,
+        stack: list[Any],
+        paths: list[tuple[object, ...]],
+        keys: list[Any],
+        value: Any,
+        event: yaml.Event,
+    ) -> tuple[object, ...]:
+        place = _place(event)
         container, path = stack[-1], paths[-1]
         if isinstance(container, list):
             path = path if len(stack) == 1 else (*path, len(container))
@@ -221,8 +252,17 @@ class _Builder:
 _NO_KEY = object()
 
 
+def _place(event: yaml.Event) -> Place:
+    mark = event.start_mark
+    return (mark.line + 1, mark.column + 1) if mark else (1, 1)
+
+
+def _control(character: str) -> str:
+    return f"the control character 0x{ord(character):02X}"
+
+
 def _tagged(event: yaml.ScalarEvent | yaml.CollectionStartEvent) -> bool:
-    return event.tag is not None and event.tag != "!"
+    return event.tag is not None
 
 
 def _scalar(event: yaml.ScalarEvent) -> Any:

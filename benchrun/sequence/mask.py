@@ -20,7 +20,7 @@ class Line(FileModel):
 
     side: Literal["at most", "at least"]
     spacing: Literal["linear", "log"] = "linear"
-    through: Annotated[tuple[Corner, ...], Listed] = Field(min_length=2)
+    through: Annotated[tuple[Corner, ...], Listed] = Field(min_length=2, max_length=1000)
 
     @model_validator(mode="after")
     def _forward(self) -> Line:
@@ -38,18 +38,24 @@ class MaskFile(FileModel):
     mask: Name
     edition: Literal[1]
     title: str = Field(min_length=1, max_length=120)
-    lines: Annotated[tuple[Line, ...], Listed] = Field(min_length=1)
+    lines: Annotated[tuple[Line, ...], Listed] = Field(min_length=1, max_length=40)
 
     @model_validator(mode="after")
     def _uncrossed(self) -> MaskFile:
         built = self.build().lines
         for upper in (x for x in built if x.side == "at most"):
             for lower in (x for x in built if x.side == "at least"):
-                f = np.unique(np.concatenate([upper.f_hz, lower.f_hz]))
+                corners = np.unique(np.concatenate([upper.f_hz, lower.f_hz]))
+                # Between corners two lines may cross only where one is straight over log f; sample it.
+                between = np.linspace(corners[:-1], corners[1:], 32).ravel()
+                f = np.unique(np.concatenate([corners, between]))
                 f = f[upper.inside(f) & lower.inside(f)]
                 if len(f) and np.any(lower.limit_at(f) > upper.limit_at(f)):
-                    raise trouble(f"lines cross near {f[np.argmax(lower.limit_at(f) > upper.limit_at(f))]:g} Hz: "
-                                  "no trace can pass", "lines")  # fmt: skip
+                    raise trouble(
+                        f"lines cross near {f[np.argmax(lower.limit_at(f) > upper.limit_at(f))]:g} Hz: "
+                        "no trace can pass",
+                        "lines",
+                    )
         return self
 
     def build(self) -> Mask:

@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import re
-from typing import Annotated, Any, Literal
+import warnings
+from typing import TYPE_CHECKING, Annotated, Any, Literal
 
 import numpy as np
 from pydantic import BeforeValidator, Discriminator, Field, Tag, create_model, model_validator
 
 from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.fields import (
+    LABEL,
     Decibel,
     Duration,
     FileModel,
@@ -20,16 +22,19 @@ from benchrun.sequence.fields import (
     Voltage,
     trouble,
 )
-from benchrun.sequence.steps import STEP_KINDS, StepModel
+from benchrun.sequence.steps import STEP_KINDS, Calibrate, StepModel
 
 __all__ = ["CAUTIONS", "Fixture", "Sequence", "SweepSetup", "Unit", "Withstands"]
 
 CAUTIONS: dict[str, str] = {
-    "static-sensitive": "The part is sensitive to static: wear the wrist strap, touch ground before the part.",
-    "connector care": "Inspect and clean connectors, align them, turn only the nut, finish with the torque wrench.",
-    "RF power": "RF power is present: switch the source off before opening a connection, and keep clear of antennas "
-    "while transmitting. Local exposure codes and licensed practice rule.",
-    "DC supply": "DC is applied: check polarity and current limit before switching on; local electrical codes rule.",
+    "static-sensitive": "The part is sensitive to static: wear the wrist strap, "
+    "touch ground before the part.",
+    "connector care": "Inspect and clean connectors, align them, turn only the nut, "
+    "finish with the torque wrench.",
+    "RF power": "RF power is present: switch the source off before opening a connection, "
+    "and keep clear of antennas while transmitting. Local exposure codes and licensed practice rule.",
+    "DC supply": "DC is applied: check polarity and current limit before switching on; "
+    "local electrical codes rule.",
     "hot parts": "Parts may be hot after use: let them cool or use tools.",
 }
 """The usual cautions by name; any other text stands for itself."""
@@ -51,9 +56,13 @@ class Fixture(FileModel):
 
 def _pattern(value: object) -> object:
     if isinstance(value, str):
+        if len(value) > 200:
+            raise ValueError(f"is a pattern of {len(value)} characters; at most 200 are allowed")
         try:
-            re.compile(value)
-        except re.error as error:
+            with warnings.catch_warnings():
+                warnings.simplefilter("error")  # what a later Python reads otherwise is refused today
+                re.compile(value)
+        except (re.error, OverflowError, RecursionError, Warning) as error:
             raise ValueError(f"{value!r} is no regular expression: {error}") from None
     return value
 
@@ -107,9 +116,8 @@ class SweepSetup(FileModel):
         """Frequencies in Hz, ``(f,)``."""
         if self.at is not None:
             return np.asarray(self.at, dtype=np.float64)
-        assert (
-            self.from_ is not None and self.to is not None and self.points is not None
-        )  # checked on reading
+        if self.from_ is None or self.to is None or self.points is None:
+            raise RuntimeError("a sweep that was never validated has no grid")
         space = np.geomspace if self.spacing == "log" else np.linspace
         return np.asarray(space(self.from_, self.to, self.points), dtype=np.float64)
 
@@ -120,23 +128,31 @@ _ENTRIES: dict[str, Any] = {
 }
 
 
-def _kind(value: Any) -> str:
+def _kind(value: Any) -> str | None:
     if isinstance(value, dict) and len(value) == 1:
-        return str(next(iter(value)))
+        return f"{LABEL}{next(iter(value))}"
     if isinstance(value, FileModel):
-        return str(getattr(value, "step").kind)  # noqa: B009 - the field exists only on created models
-    return "a step is one key, its kind, with its settings below"
+        return f"{LABEL}{getattr(value, 'step').kind}"  # noqa: B009 - the field exists only on created models
+    return None
 
 
 def _union() -> Any:
-    members = [Annotated[model, Tag(kind)] for kind, model in _ENTRIES.items()]
+    members = [Annotated[model, Tag(f"{LABEL}{kind}")] for kind, model in _ENTRIES.items()]
     union: Any = members[0]
     for member in members[1:]:
         union = union | member
     return Annotated[union, Discriminator(_kind)]
 
 
-Entry = _union()
+if TYPE_CHECKING:
+
+    class Entry(FileModel):
+        """One step under its kind."""
+
+        step: StepModel
+
+else:
+    Entry = _union()
 
 
 class Sequence(FileModel):
@@ -147,8 +163,8 @@ class Sequence(FileModel):
     title: str = Field(min_length=1, max_length=120)
     unit: Unit
     cautions: Annotated[tuple[str, ...], Listed] = ()
-    sweeps: dict[Name, SweepSetup] = Field(min_length=1)
-    entries: Annotated[tuple[Entry, ...], Listed] = Field(alias="steps", min_length=1)
+    sweeps: dict[Name, SweepSetup] = Field(min_length=1, max_length=100)
+    entries: Annotated[tuple[Entry, ...], Listed] = Field(alias="steps", min_length=1, max_length=1000)
 
     @property
     def steps(self) -> tuple[StepModel, ...]:
@@ -161,9 +177,17 @@ class Sequence(FileModel):
         return tuple(CAUTIONS.get(text, text) for text in self.cautions)
 
     def sweep_of(self, step: StepModel) -> SweepSetup:
-        """The sweep that a calibrate or sweep step uses."""
+        """Find the sweep that a calibrate or sweep step uses.
+
+        Raises
+        ------
+        KeyError
+            If a name does not resolve.
+        """
         named = getattr(step, "sweep", None)
         if named is None:
-            calibration = next(s for s in self.steps if s.name == getattr(step, "with_", None))
-            named = getattr(calibration, "sweep")  # noqa: B009 - only calibrations are named by `with`
+            wanted = getattr(step, "with_", None)
+            named = next((s.sweep for s in self.steps if isinstance(s, Calibrate) and s.name == wanted), None)
+        if named not in self.sweeps:
+            raise KeyError(f"no sweep stands behind step {step.name!r}")
         return self.sweeps[named]

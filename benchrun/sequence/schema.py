@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import copy
+import functools
 from typing import Any
 
 from pydantic import BaseModel
@@ -11,6 +13,11 @@ __all__ = ["keys_at", "schema"]
 
 def schema(model: type[BaseModel]) -> dict[str, Any]:
     """JSON Schema, draft 2020-12, with the keys as files write them."""
+    return copy.deepcopy(_made(model))
+
+
+@functools.cache
+def _made(model: type[BaseModel]) -> dict[str, Any]:
     made = model.model_json_schema(by_alias=True, mode="validation")
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **made}
 
@@ -27,12 +34,19 @@ def keys_at(model: type[BaseModel], data: Any, path: tuple[object, ...]) -> list
     path
         Keys and indices down to the mapping.
     """
-    whole = schema(model)
+    whole = _made(model)
     node = whole
     for part in path:
         node = _into(whole, node, part)
-        data = data[part] if isinstance(data, dict | list) else None
+        data = _down(data, part)
     return sorted({key for option in _options(whole, node, data) for key in option.get("properties", {})})
+
+
+def _down(data: Any, part: Any) -> Any:
+    try:
+        return data[part]
+    except (KeyError, IndexError, TypeError):
+        return None
 
 
 def _resolve(whole: dict[str, Any], node: dict[str, Any]) -> dict[str, Any]:

@@ -22,5 +22,5 @@ class StepModel(FileModel):
     name: str
 
     def needs(self) -> dict[str, tuple[str, str]]:
-        """What must stand before: by key of the file, the kind of thing and its name."""
+        """Tell what must stand before: by key of the file, the kind of thing and its name."""
         return {}

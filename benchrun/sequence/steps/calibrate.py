@@ -34,5 +34,5 @@ class Calibrate(StepModel):
         return self.ports or ((1, 2) if self.method == "SOLT" else (1,))
 
     def needs(self) -> dict[str, tuple[str, str]]:
-        """A sweep."""
+        """Need a sweep."""
         return {"sweep": ("sweep", self.sweep)}

@@ -39,5 +39,5 @@ class DeEmbed(StepModel):
         return self
 
     def needs(self) -> dict[str, tuple[str, str]]:
-        """A network."""
+        """Need a network."""
         return {"from": ("network", self.from_)}

@@ -10,7 +10,16 @@ from pydantic import BeforeValidator, Discriminator, Field, Tag, WithJsonSchema,
 
 from benchrun.quantity import QuantityError, parse, render
 from benchrun.rf.figures import FIGURES, FigureKind
-from benchrun.sequence.fields import Decibel, FileModel, Frequency, FrequencyRange, Listed, Name, trouble
+from benchrun.sequence.fields import (
+    LABEL,
+    Decibel,
+    FileModel,
+    Frequency,
+    FrequencyRange,
+    Listed,
+    Name,
+    trouble,
+)
 from benchrun.sequence.steps.base import StepModel
 from benchrun.uncertainty.decision import Rule
 
@@ -60,11 +69,15 @@ def _figure(value: object) -> object:
 
 
 def _bound_text(value: object) -> object:
-    """A bare number stays the text it was: right for a ratio, refused later for anything with a unit."""
+    """Keep a bare number as the text it was: right for a ratio, refused later for anything with a unit."""
     return str(value) if isinstance(value, int | float) and not isinstance(value, bool) else value
 
 
-Bound = Annotated[str, BeforeValidator(_bound_text)]
+Bound = Annotated[
+    str,
+    BeforeValidator(_bound_text),
+    WithJsonSchema({"type": ["string", "number"], "description": "with its unit; VSWR has none"}),
+]
 
 
 class FigureLimit(FileModel):
@@ -159,6 +172,7 @@ class MaskLimit(FileModel):
 
     mask: str = Field(min_length=1, description="name or file of the mask")
     trace: Literal["S11", "S12", "S21", "S22"]
+    over: FrequencyRange | None = Field(default=None, description="a band that the mask must cover whole")
     name: str | None = Field(default=None, max_length=60)
     rule: RuleText | None = None
 
@@ -170,12 +184,13 @@ class MaskLimit(FileModel):
 
 def _which(value: Any) -> str:
     if isinstance(value, MaskLimit):
-        return "mask"
-    return "mask" if isinstance(value, dict) and "mask" in value else "figure"
+        return f"{LABEL}mask"
+    return f"{LABEL}mask" if isinstance(value, dict) and "mask" in value else f"{LABEL}figure"
 
 
 Limit = Annotated[
-    Annotated[FigureLimit, Tag("figure")] | Annotated[MaskLimit, Tag("mask")], Discriminator(_which)
+    Annotated[FigureLimit, Tag(f"{LABEL}figure")] | Annotated[MaskLimit, Tag(f"{LABEL}mask")],
+    Discriminator(_which),
 ]
 
 
@@ -188,8 +203,8 @@ class Judge(StepModel):
     name: Name = Field(default="judgement", alias="as")
     from_: Name = Field(alias="from", description="the result to judge")
     rule: RuleText = Field(default=Rule(), description="decision rule of all limits of this step")
-    limits: Annotated[tuple[Limit, ...], Listed] = Field(min_length=1)
+    limits: Annotated[tuple[Limit, ...], Listed] = Field(min_length=1, max_length=1000)
 
     def needs(self) -> dict[str, tuple[str, str]]:
-        """A network."""
+        """Need a network."""
         return {"from": ("network", self.from_)}

@@ -33,7 +33,7 @@ class Sweep(StepModel):
         return self
 
     def needs(self) -> dict[str, tuple[str, str]]:
-        """A calibration or a sweep."""
+        """Need a calibration or a sweep."""
         if self.with_ is not None:
             return {"with": ("calibration", self.with_)}
         return {"sweep": ("sweep", str(self.sweep))}

@@ -1,0 +1,185 @@
+"""Whole-file checks of a sequence against its kits, its masks and the bench."""
+
+from __future__ import annotations
+
+import datetime
+from collections.abc import Iterator, Mapping
+
+import numpy as np
+
+from benchrun.errors import Problem
+from benchrun.quantity import Dimension, render
+from benchrun.rf.calibration import METHODS
+from benchrun.rf.masks import Mask
+from benchrun.rf.twoport import FloatArray
+from benchrun.sequence.bench import Bench
+from benchrun.sequence.checks import grid_of, outside, span, step_paths
+from benchrun.sequence.files import Loaded
+from benchrun.sequence.kit import KitFile
+from benchrun.sequence.models import Sequence, SweepSetup
+from benchrun.sequence.steps import Calibrate, Judge
+from benchrun.sequence.steps.judge import MaskLimit
+
+__all__ = ["check_bench", "check_kits", "check_masks"]
+
+
+def check_kits(
+    loaded: Loaded[Sequence], kits: Mapping[str, Loaded[KitFile]], today: datetime.date
+) -> list[Problem]:
+    """Check that kits reach over the sweep, hold the standards, and are not past their date.
+
+    Parameters
+    ----------
+    loaded
+        The sequence.
+    kits
+        By the name that the sequence uses; a name that is not there is not checked.
+    today
+        A kit is good on the day it is due.
+    """
+    problems = []
+    for step, path in step_paths(loaded):
+        if not isinstance(step, Calibrate) or step.kit not in kits or step.sweep not in loaded.model.sweeps:
+            continue
+        kit, grid = kits[step.kit].model, loaded.model.sweeps[step.sweep].grid()
+        low, high = kit.frequency
+        said = []
+        if grid[0] < low * (1 - 1e-12) or grid[-1] > high * (1 + 1e-12):
+            said.append(
+                (
+                    f"the sweep {step.sweep} covers {span(grid[0], grid[-1])}, but kit {kit.kit} is defined "
+                    f"only for {span(low, high)}",
+                    "Use another kit or narrow the sweep.",
+                )
+            )
+        lacking = [n for n in METHODS[step.method].standards if n not in kit.standards]
+        if lacking:
+            said.append((f"kit {kit.kit} lacks {', '.join(lacking)} for {step.method}", "Use another kit."))
+        if kit.due and kit.due < today:
+            said.append(
+                (
+                    f"kit {kit.kit} was due for calibration on {kit.due}",
+                    "Have it calibrated, or use another kit.",
+                )
+            )
+        problems += [loaded.document.problem(text, (*path, "kit"), advice) for text, advice in said]
+    return problems
+
+
+def check_masks(loaded: Loaded[Sequence], masks: Mapping[str, Mask]) -> list[Problem]:
+    """Check that masks lie within their sweep, meet points of it, and cover the band they should.
+
+    Parameters
+    ----------
+    loaded
+        The sequence.
+    masks
+        By the name that the sequence uses; a name that is not there is not checked.
+    """
+    problems = []
+    for step, path in step_paths(loaded):
+        if not isinstance(step, Judge):
+            continue
+        grid = grid_of(loaded.model, step.from_)
+        for i, limit in enumerate(step.limits):
+            if isinstance(limit, MaskLimit) and limit.mask in masks:
+                for text, key, advice in _mask(limit, masks[limit.mask], grid):
+                    problems.append(loaded.document.problem(text, (*path, "limits", i, key), advice))
+    return problems
+
+
+def _mask(limit: MaskLimit, mask: Mask, grid: FloatArray | None) -> Iterator[tuple[str, str, str]]:
+    if limit.over and (gap := _gap(mask, *limit.over)):
+        yield (
+            f"mask {limit.mask} must cover {span(*limit.over)}, but has no line from {span(*gap)}",
+            "over",
+            "Lengthen the mask or shorten the band.",
+        )
+    if grid is None:
+        return
+    low, high = mask.band
+    if outside(low, high, grid):
+        yield (
+            f"mask {limit.mask} covers {span(low, high)}, but the sweep only {span(grid[0], grid[-1])}",
+            "mask",
+            "Widen the sweep or shorten the mask.",
+        )
+    for line in mask.lines:
+        if not np.any(line.inside(grid)):
+            yield (
+                f"mask {limit.mask} has a line from {span(line.f_hz[0], line.f_hz[-1])}, "
+                "where the sweep has no point",
+                "mask",
+                "Use more points.",
+            )
+
+
+def _gap(mask: Mask, low: float, high: float) -> tuple[float, float] | None:
+    """Find the first part of a band that no line covers."""
+    reached = low
+    for line in sorted(mask.lines, key=lambda x: float(x.f_hz[0])):
+        if line.f_hz[0] > reached:
+            break
+        reached = max(reached, float(line.f_hz[-1]))
+    if reached >= high:
+        return None
+    following = [float(x.f_hz[0]) for x in mask.lines if x.f_hz[0] > reached]
+    return reached, min([high, *following])
+
+
+def check_bench(loaded: Loaded[Sequence], bench: Bench) -> list[Problem]:
+    """Check sweeps against the analyzer's range, and power against what unit, port and receiver withstand."""
+    problems = []
+    for name, sweep in loaded.model.sweeps.items():
+        for text, key, advice in (*_range(name, sweep, bench), *_power(loaded.model, sweep, bench)):
+            problems.append(loaded.document.problem(text, ("sweeps", name, key), advice))
+    return problems
+
+
+def _range(name: str, sweep: SweepSetup, bench: Bench) -> Iterator[tuple[str, str, str]]:
+    can, grid, owner = bench.analyzer.range, sweep.grid(), f"the analyzer of {bench.bench}"
+    if can is None:
+        return
+    low, high = can.frequency
+    if outside(grid[0], grid[-1], np.array([low, high])):
+        key = "at" if sweep.at is not None else "to" if grid[-1] > high else "from"
+        yield (
+            f"sweep {name} covers {span(grid[0], grid[-1])}, but {owner} only {span(low, high)}",
+            key,
+            "Narrow the sweep or use another bench.",
+        )
+    if len(grid) > can.points:
+        key = "at" if sweep.at is not None else "points"
+        yield f"sweep {name} has {len(grid)} points, {owner} at most {can.points}", key, "Use fewer points."
+    if can.power and not can.power[0] <= sweep.power <= can.power[1]:
+        yield (
+            f"{sweep.power:g} dBm is outside the {can.power[0]:g} to {can.power[1]:g} dBm of {owner}",
+            "power",
+            "Change the power.",
+        )
+    if can.bandwidth and not can.bandwidth[0] <= sweep.bandwidth <= can.bandwidth[1]:
+        yield (
+            f"{render(sweep.bandwidth, Dimension.FREQUENCY)} is outside the IF bandwidths "
+            f"{span(*can.bandwidth)} of {owner}",
+            "bandwidth",
+            "Change the bandwidth.",
+        )
+
+
+def _power(sequence: Sequence, sweep: SweepSetup, bench: Bench) -> Iterator[tuple[str, str, str]]:
+    unit = sequence.unit
+    if sweep.power > unit.withstands.power:
+        yield (
+            f"{sweep.power:g} dBm is more than the unit withstands ({unit.withstands.power:g} dBm)",
+            "power",
+            "Lower the power.",
+        )
+    reaches = sweep.power + max(unit.gain, 0.0)
+    withstands = [port.withstands.power for port in bench.analyzer.ports.values()]
+    if withstands and reaches > min(withstands):
+        yield (
+            f"{sweep.power:g} dBm and a gain of {unit.gain:g} dB bring {reaches:g} dBm to a port that "
+            f"withstands {min(withstands):g} dBm",
+            "power",
+            "Lower the power or put a pad before the port.",
+        )
