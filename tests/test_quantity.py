@@ -138,8 +138,8 @@ def test_wrong_capitals_bring_the_right_ones(text: str, dimension: Dimension, me
 @pytest.mark.parametrize(
     "text",
     [
-    many = 200_000
-    for text in ("1" * many + "x" * many, " " * many + "1", "1" + " " * many + "\n1", "1e" * many):
+        "", " ", "MHz", "ten MHz", "1,5 MHz", "1_0 MHz", "0x10 MHz", "nan MHz", "inf MHz", "--1 MHz",
+        "1e MHz",
         "1 2 MHz", "10 M\nHz", "10 MHz\n;DROP", "１０ MHz", "1.2.3 MHz", "∞ Hz", "10 MHz MHz", "10 dMHz",
     ],
 )  # fmt: skip
