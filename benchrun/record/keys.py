@@ -12,7 +12,6 @@ HOME is ``BENCHRUN_HOME``, or the folder for settings that the system gives each
 
 from __future__ import annotations
 
-import json
 import os
 import re
 import stat
@@ -21,10 +20,11 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Final
 
-from benchrun.errors import CouldNotCheck, InputError, RecordError
-from benchrun.record.placing import place_new, place_over
+from benchrun.errors import InputError, RecordError
+from benchrun.record.placing import exists, place_new, place_over, read_bytes
 from benchrun.record.publickey import PublicKey
 from benchrun.record.signer import FileSigner, Purpose, is_protected
+from benchrun.record.trust import TrustedKey, TrustFolder
 
 __all__ = ["REHEARSAL", "KeyInfo", "KeyStore", "TrustedKey", "home_folder"]
 
@@ -54,30 +54,6 @@ class KeyInfo:
     protected: bool
 
 
-@dataclass(frozen=True, slots=True)
-class TrustedKey:
-    """A public key that is trusted here.
-
-    Parameters
-    ----------
-    public_key
-        The key.
-    label
-        Whose it is, in the user's words.
-    purpose
-        What it may speak for.
-    """
-
-    public_key: PublicKey
-    label: str
-    purpose: Purpose
-
-    @property
-    def key_id(self) -> str:
-        """Its id."""
-        return self.public_key.key_id
-
-
 def home_folder(environ: Mapping[str, str] | None = None) -> Path:
     """Where keys lie: ``BENCHRUN_HOME``, else the user's folder for settings.
 
@@ -85,8 +61,22 @@ def home_folder(environ: Mapping[str, str] | None = None) -> Path:
     ----------
     environ
         Environment variables; the process's own by default.
+
+    Raises
+    ------
+    InputError
+        If there is no home folder either.
     """
     env = os.environ if environ is None else environ
+    try:
+        return _home_folder(env)
+    except RuntimeError as error:
+        raise InputError(
+            f"{error}; name a folder for keys in the environment variable BENCHRUN_HOME"
+        ) from None
+
+
+def _home_folder(env: Mapping[str, str]) -> Path:
     if own := env.get("BENCHRUN_HOME"):
         return Path(own).expanduser()
     if os.name == "nt" and (roaming := env.get("APPDATA")):
@@ -107,6 +97,7 @@ class KeyStore:
 
     def __init__(self, home: Path | None = None) -> None:
         self.home = home_folder() if home is None else home
+        self._trust = TrustFolder(self.home / "trusted")
 
     def rehearsal(self) -> FileSigner:
         """The rehearsal key; made and trusted for rehearsals on first use.
@@ -119,12 +110,12 @@ class KeyStore:
             If the folder cannot be written or the key not be read.
         """
         path = self._private(REHEARSAL)
-        if not path.exists():
+        if not exists(path):
             place_new(path, FileSigner.generate(REHEARSAL).to_pem(), private=True)
         signer = self._open(REHEARSAL, None)
-        if not self._trusted_file(signer.key_id, ".json").exists():
+        if self._trust.find(signer.key_id) is None:
             place_over(self._public(REHEARSAL), signer.public_key.pem)
-            self._put_trust(TrustedKey(signer.public_key, "rehearsal key of this place", REHEARSAL))
+            self._trust.put(TrustedKey(signer.public_key, "rehearsal key of this place", REHEARSAL))
         return signer
 
     def make(self, name: str, passphrase: str | None = None) -> KeyInfo:
@@ -153,7 +144,7 @@ class KeyStore:
         if not place_new(self._private(name), signer.to_pem(passphrase), private=True):
             raise InputError(f"there is a key {name!r} already; choose another name")
         place_over(self._public(name), signer.public_key.pem)
-        self._put_trust(TrustedKey(signer.public_key, name, "bench"))
+        self._trust.put(TrustedKey(signer.public_key, name, "bench"))
         return KeyInfo(name, signer.key_id, "bench", passphrase is not None)
 
     def list(self) -> tuple[KeyInfo, ...]:
@@ -203,8 +194,8 @@ class KeyStore:
             If it cannot be read.
         """
         self._check_name(name)
-        if self._public(name).exists():
-            return PublicKey.from_pem(_read(self._public(name))).pem
+        if exists(self._public(name)):
+            return PublicKey.from_pem(read_bytes(self._public(name))).pem
         return self._open(name, None).public_key.pem
 
     def trust(self, pem: bytes, label: str, purpose: Purpose = "bench") -> TrustedKey:
@@ -227,15 +218,7 @@ class KeyStore:
             If the system refuses.
         """
         key = TrustedKey(PublicKey.from_pem(pem), label.strip(), purpose)
-        if not key.label or not key.label.isprintable():
-            raise InputError(f"the label {label!r} must be printable text that says whose key this is")
-        known = self.find(key.key_id)
-        if known and known.purpose != purpose:
-            raise InputError(
-                f"key {key.key_id[:16]} is trusted as a {known.purpose} key ({known.label}) and cannot be a "
-                f"{purpose} key too"
-            )
-        self._put_trust(key)
+        self._trust.put(key)
         return key
 
     def distrust(self, key_id: str) -> TrustedKey:
@@ -251,18 +234,7 @@ class KeyStore:
         InputError
             If no or more than one trusted key begins so.
         """
-        fits = [key for key in self.trusted() if key.key_id.startswith(key_id.lower())]
-        if len(key_id) < 8 or len(fits) != 1:
-            raise InputError(
-                f"{key_id!r} stands for {len(fits) if len(key_id) >= 8 else 'too many'} trusted keys; give "
-                "8 or more digits of one id as shown by: benchrun keys list"
-            )
-        try:
-            for suffix in (".json", ".pem"):
-                self._trusted_file(fits[0].key_id, suffix).unlink(missing_ok=True)
-        except OSError as error:
-            raise RecordError(f"the trust in {key_id} could not be removed: {error}") from error
-        return fits[0]
+        return self._trust.remove(key_id)
 
     def trusted(self, purpose: Purpose | None = None) -> tuple[TrustedKey, ...]:
         """The trusted public keys, by id.
@@ -277,24 +249,17 @@ class KeyStore:
         CouldNotCheck
             If an entry is damaged.
         """
-        ids = sorted(path.stem for path in (self.home / "trusted").glob("*.json"))
-        keys = [self._load_trust(one) for one in ids]
-        return tuple(key for key in keys if purpose in (None, key.purpose))
+        return tuple(key for key in self._trust.all() if purpose in (None, key.purpose))
 
     def find(self, key_id: str) -> TrustedKey | None:
         """The trusted key with this id, or None."""
-        if not re.fullmatch("[0-9a-f]{64}", key_id) or not self._trusted_file(key_id, ".json").exists():
-            return None
-        return self._load_trust(key_id)
+        return self._trust.find(key_id)
 
     def _private(self, name: str) -> Path:
         return self.home / "keys" / f"{name}.pem"
 
     def _public(self, name: str) -> Path:
         return self.home / "keys" / f"{name}.public.pem"
-
-    def _trusted_file(self, key_id: str, suffix: str) -> Path:
-        return self.home / "trusted" / f"{key_id}{suffix}"
 
     def _check_name(self, name: str) -> None:
         if not _NAME.fullmatch(name) or name.endswith((".", ".public")):
@@ -303,7 +268,7 @@ class KeyStore:
     def _open(self, name: str, passphrase: str | None) -> FileSigner:
         self._check_name(name)
         path = self._private(name)
-        if not path.exists():
+        if not exists(path):
             known = ", ".join(info.name for info in self.list()) or "none"
             raise InputError(
                 f"there is no key {name!r} in {self.home} (there: {known}); make one "
@@ -312,52 +277,21 @@ class KeyStore:
         if os.name != "nt" and (mode := stat.S_IMODE(path.stat().st_mode)) & 0o077:
             raise RecordError(
                 f"others can read the private key {path} (mode {mode:04o}), so it proves nothing; allow only "
-                f"yourself with: chmod 600 {path}"
+                f"yourself with: chmod 600 {path} (or keep keys where modes are kept: BENCHRUN_HOME)"
             )
         try:
-            return FileSigner.from_pem(_read(path), _purpose(name), passphrase)
+            return FileSigner.from_pem(read_bytes(path), _purpose(name), passphrase)
         except InputError as error:
             raise InputError(f"key {name!r} ({path}): {error}") from None
 
     def _info(self, name: str) -> KeyInfo:
-        protected = is_protected(_read(self._private(name)))
+        protected = is_protected(read_bytes(self._private(name)))
         try:
             key_id = PublicKey.from_pem(self.export(name)).key_id
         except (InputError, RecordError):
             key_id = ""
         return KeyInfo(name, key_id, _purpose(name), protected)
 
-    def _put_trust(self, key: TrustedKey) -> None:
-        about = {"keyid": key.key_id, "label": key.label, "purpose": key.purpose}
-        place_over(self._trusted_file(key.key_id, ".pem"), key.public_key.pem)
-        place_over(
-            self._trusted_file(key.key_id, ".json"),
-            (json.dumps(about, indent=1, ensure_ascii=False) + "\n").encode(),
-        )
-
-    def _load_trust(self, key_id: str) -> TrustedKey:
-        path = self._trusted_file(key_id, ".json")
-        try:
-            about = json.loads(_read(path))
-            key = TrustedKey(
-                PublicKey.from_pem(_read(path.with_suffix(".pem"))), str(about["label"]), about["purpose"]
-            )
-            if key.purpose not in ("bench", "rehearsal") or not key.key_id == about["keyid"] == key_id:
-                raise ValueError("it is the entry of another key")
-        except (InputError, RecordError, ValueError, KeyError, TypeError) as error:
-            raise CouldNotCheck(
-                f"the trusted key {path} is damaged ({error}); remove both of its files and trust the key "
-                "anew with: benchrun keys trust FILE"
-            ) from None
-        return key
-
 
 def _purpose(name: str) -> Purpose:
     return "rehearsal" if name == REHEARSAL else "bench"
-
-
-def _read(path: Path) -> bytes:
-    try:
-        return path.read_bytes()
-    except OSError as error:
-        raise RecordError(f"{path} cannot be read: {error.strerror or error}") from error

@@ -8,7 +8,35 @@ from pathlib import Path
 
 from benchrun.errors import RecordError
 
-__all__ = ["place_new", "place_over"]
+__all__ = ["exists", "place_new", "place_over", "read_bytes"]
+
+
+def exists(path: Path) -> bool:
+    """Whether there is such a file.
+
+    Raises
+    ------
+    RecordError
+        If the system does not say.
+    """
+    try:
+        return path.exists()
+    except OSError as error:
+        raise RecordError(f"{path} cannot be reached: {error.strerror or error}") from error
+
+
+def read_bytes(path: Path) -> bytes:
+    """All of a file.
+
+    Raises
+    ------
+    RecordError
+        If the system refuses.
+    """
+    try:
+        return path.read_bytes()
+    except OSError as error:
+        raise RecordError(f"{path} cannot be read: {error.strerror or error}") from error
 
 
 def place_new(path: Path, content: bytes, *, private: bool = False) -> bool:

@@ -112,6 +112,8 @@ def _payload(data: Any) -> Payload:
 
     try:
         return Payload.from_data(data)
+    except RecursionError:
+        raise CouldNotCheck("is nested too deeply for a run record") from None
     except ValidationError as error:
         first = error.errors(include_url=False)[0]
         where = ".".join(str(part) for part in first["loc"]) or "predicate"

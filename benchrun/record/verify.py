@@ -53,6 +53,10 @@ class Record:
         """Its files, but for the envelope."""
         return tuple(self.statement.subjects)
 
+    def path(self, file: str) -> Path:
+        """Where one of its files lies."""
+        return self.folder / file
+
     def content(self, file: str) -> bytes:
         """The bytes of one of its files, checked against the digest in the statement.
 
@@ -154,7 +158,10 @@ def _envelope_bytes(folder: Path) -> bytes:
         raise CouldNotCheck(f"{folder} is no folder, so it is no record; give the folder that a run named")
     if not os.path.lexists(folder / FILE_NAME):
         raise CouldNotCheck(f"{folder} is no record: it has no {FILE_NAME}")
-    return b"".join(_chunks(folder, FILE_NAME, MAX_ENVELOPE_BYTES))
+    try:
+        return b"".join(_chunks(folder, FILE_NAME, MAX_ENVELOPE_BYTES))
+    except DigestWrong as error:
+        raise CouldNotCheck(str(error)) from None
 
 
 def _read(folder: Path, text: bytes) -> Record:
@@ -219,7 +226,8 @@ def _check_files(record: Record) -> None:
             )
     for name in sorted(found):
         if name not in subjects and name != FILE_NAME:
-            raise DigestWrong(f"{record.folder / name}: was added after the record was signed")
+            shown = name if name.isprintable() else ascii(name)
+            raise DigestWrong(f"{record.folder / shown}: was added after the record was signed")
     if missing := [name for name in record.payload.files if name not in subjects]:
         raise CouldNotCheck(f"{record.folder / FILE_NAME}: the run names {missing[0]!r}, which is not signed")
     for name, wanted in subjects.items():
@@ -230,7 +238,7 @@ def _check_files(record: Record) -> None:
 
 
 def _walk(folder: Path) -> set[str]:
-    """All that lies in the folder: files, links, and folders that hold nothing."""
+    """All that lies in the folder: files, and folders that hold nothing."""
     found: set[str] = set()
 
     def refuse(error: OSError) -> None:
@@ -239,7 +247,11 @@ def _walk(folder: Path) -> set[str]:
     for place, folders, files in os.walk(folder, onerror=refuse):
         inside = Path(place).relative_to(folder)
         links = [name for name in folders if Path(place, name).is_symlink()]
-        found.update((inside / name).as_posix() for name in (*files, *links))
+        found.update((inside / name).as_posix() for name in files)
+        if links:
+            raise DigestWrong(
+                f"{Path(place) / links[0]}: is a link, where the record has a folder or nothing"
+            )
         if not folders and not files and place != str(folder):
             found.add(inside.as_posix())
     return found

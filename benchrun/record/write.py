@@ -100,11 +100,11 @@ def write(draft: Draft, folder: Path, name: str, signer: Signer, storage: Storag
         stored = _rename_to_free(work, folder, name, storage)
         storage.sync(folder)
     except OSError as error:
-        left = _remove((work, stored), storage)
+        left = _remove(work, stored, storage)
         raise RecordNotWritten(_sentence(folder, error) + left) from error
     except BaseException:
         # A stop while writing: the caller may rescue the draft, a half record helps nobody.
-        _remove((work, stored), storage)
+        _remove(work, stored, storage)
         raise
     return stored
 
@@ -226,15 +226,17 @@ def _rename_to_free(work: Path, folder: Path, name: str, storage: Storage) -> Pa
 _TAKEN = {errno.EEXIST, errno.ENOTEMPTY, errno.ENOTDIR, errno.EACCES}
 
 
-def _remove(paths: tuple[Path, ...], storage: Storage) -> str:
+def _remove(work: Path, stored: Path, storage: Storage) -> str:
     """Remove what was written; returns a sentence about what could not be removed."""
-    left = ""
-    for path in dict.fromkeys(paths):
-        try:
-            storage.remove_tree(path)
-        except OSError as error:
-            left = f" {path} could not be removed ({error.strerror}); it is no record, remove it by hand."
-    return left
+    try:
+        if stored != work:
+            # Hidden first: a record that is half removed must not stand there under its name.
+            storage.rename(stored, work)
+        storage.remove_tree(work)
+    except OSError as error:
+        left = stored if os.path.lexists(stored) else work
+        return f" {left} could not be removed ({error.strerror}); it does not count, remove it by hand."
+    return ""
 
 
 def _sentence(folder: Path, error: OSError) -> str:
