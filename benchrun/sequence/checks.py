@@ -1,6 +1,6 @@
 """Whole-file checks of a sequence by itself: names, order, bands, ports, the serial number.
 
-What depends on kits, masks and the bench is checked in :mod:`benchrun.sequence.equipment`.
+What depends on kits, masks and the bench is checked in :mod:`benchrun.sequence.equipment` and offered here too.
 """
 
 from __future__ import annotations
@@ -13,13 +13,15 @@ import numpy as np
 from benchrun.errors import InputError, Problem
 from benchrun.quantity import Dimension, render
 from benchrun.rf.twoport import FloatArray
+from benchrun.sequence.equipment import check_bench, check_kits, check_masks
 from benchrun.sequence.files import Loaded
 from benchrun.sequence.loading import Document
 from benchrun.sequence.models import Sequence
-from benchrun.sequence.steps import Calibrate, Judge, StepModel
+from benchrun.sequence.resolve import grid_of, outside, source_of, span, step_paths
+from benchrun.sequence.steps import Calibrate, Judge
 from benchrun.sequence.steps.judge import FigureLimit, MaskLimit
 
-__all__ = ["check_sequence", "check_serial", "grid_of", "outside", "span", "step_paths"]
+__all__ = ["check_bench", "check_kits", "check_masks", "check_sequence", "check_serial"]
 
 _SAFE_SERIAL = re.compile(r"[A-Za-z0-9][A-Za-z0-9._+-]{0,63}")
 
@@ -48,11 +50,6 @@ def check_serial(serial: str, sequence: Sequence) -> str:
 def check_sequence(loaded: Loaded[Sequence]) -> list[Problem]:
     """Names, order, limits inside sweeps, apertures: all that the sequence alone can tell."""
     return [*_names(loaded), *_bands(loaded), *_ports(loaded)]
-
-
-def step_paths(loaded: Loaded[Sequence]) -> list[tuple[StepModel, tuple[object, ...]]]:
-    """Give each step with its path in the file."""
-    return [(step, ("steps", i, step.kind)) for i, step in enumerate(loaded.model.steps)]
 
 
 def _names(loaded: Loaded[Sequence]) -> Iterator[Problem]:
@@ -95,26 +92,6 @@ def _names(loaded: Loaded[Sequence]) -> Iterator[Problem]:
             "Add a `judge` step.",
             key=True,
         )
-
-
-def _source(sequence: Sequence, name: str) -> StepModel | None:
-    """Find the sweep step that a network comes from; only steps further up are followed: a circle ends."""
-    wanted: str | None = name
-    for step in reversed(sequence.steps):
-        if step.name == wanted and step.leaves == "network":
-            wanted = getattr(step, "from_", None)
-            if wanted is None:
-                return step
-    return None
-
-
-def grid_of(sequence: Sequence, name: str) -> FloatArray | None:
-    """Find the grid of a network in Hz, ``(f,)``; None where names do not resolve."""
-    step = _source(sequence, name)
-    try:
-        return sequence.sweep_of(step).grid() if step is not None else None
-    except KeyError:
-        return None  # a name that does not resolve is reported elsewhere
 
 
 def _bands(loaded: Loaded[Sequence]) -> Iterator[Problem]:
@@ -166,16 +143,6 @@ def _figure_band(
             )
 
 
-def outside(low: float, high: float, grid: FloatArray) -> bool:
-    """Whether a band reaches beyond a grid, rounding aside."""
-    return bool(low < grid[0] * (1 - 1e-12) or high > grid[-1] * (1 + 1e-12))
-
-
-def span(low: float, high: float) -> str:
-    """Write a band for people."""
-    return f"{render(float(low), Dimension.FREQUENCY)} to {render(float(high), Dimension.FREQUENCY)}"
-
-
 def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
     document = loaded.document
     calibrations = {s.name: s for s in loaded.model.steps if isinstance(s, Calibrate)}
@@ -193,7 +160,7 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
                     f"{step.method} has no isolation to read", (*path, "isolation"), "Take `isolation` out."
                 )
         if isinstance(step, Judge):
-            source = _source(loaded.model, step.from_)
+            source = source_of(loaded.model, step.from_)
             calibration = calibrations.get(getattr(source, "with_", None) or "")
             if loaded.model.unit.ports == 1:
                 has, one = "the unit", 1

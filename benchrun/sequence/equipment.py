@@ -13,10 +13,10 @@ from benchrun.rf.calibration import METHODS
 from benchrun.rf.masks import Mask
 from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.bench import Bench
-from benchrun.sequence.checks import grid_of, outside, span, step_paths
 from benchrun.sequence.files import Loaded
 from benchrun.sequence.kit import KitFile
 from benchrun.sequence.models import Sequence, SweepSetup
+from benchrun.sequence.resolve import grid_of, outside, span, step_paths
 from benchrun.sequence.steps import Calibrate, Judge
 from benchrun.sequence.steps.judge import MaskLimit
 
