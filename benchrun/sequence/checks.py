@@ -1,6 +1,6 @@
 """Whole-file checks of a sequence by itself: names, order, bands, ports, the serial number.
 
-What depends on kits, masks and the bench is checked in :mod:`benchrun.sequence.equipment` and offered here too.
+What depends on kits, masks and the bench is checked in :mod:`benchrun.sequence.equipment`, offered here too.
 """
 
 from __future__ import annotations
