@@ -1,0 +1,1 @@
+"""Ways into a world: a VISA library object, a TCP socket."""

@@ -1,0 +1,1 @@
+"""Behaviours of simulated instruments, one file a kind."""

@@ -1,0 +1,109 @@
+"""The tree of commands that an instrument knows."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Callable
+from dataclasses import dataclass, field
+from typing import TypeAlias
+
+from sim_instruments.scpi.errors import ScpiError
+from sim_instruments.scpi.message import short
+
+__all__ = ["Command", "Tree"]
+
+Setter: TypeAlias = Callable[[tuple[str, ...]], None]
+Getter: TypeAlias = Callable[[tuple[str, ...]], "str | bytes"]
+
+
+@dataclass(frozen=True)
+class Command:
+    """What a header does.
+
+    Parameters
+    ----------
+    set
+        Takes the parameters; None if it is only a query.
+    get
+        Takes the parameters and answers; None if there is no query.
+    least, most
+        How many parameters the setting takes.
+    """
+
+    set: Setter | None = None
+    get: Getter | None = None
+    least: int = 0
+    most: int = 0
+
+
+@dataclass
+class _Node:
+    long: str = ""
+    suffixes: int = 1
+    optional: bool = False
+    command: Command | None = None
+    children: list[_Node] = field(default_factory=list)
+
+    def fits(self, written: str) -> bool:
+        match = re.fullmatch(r"([A-Za-z_]+)(\d*)", written)
+        if match is None or match[1].upper() not in (self.long.upper(), short(self.long)):
+            return False
+        if match[2] and not 1 <= int(match[2]) <= self.suffixes:
+            raise ScpiError(-114, written)
+        return True
+
+
+class Tree:
+    """Commands by their SCPI header, optional nodes in brackets.
+
+    Examples
+    --------
+    >>> tree = Tree()
+    >>> tree.add("[SENSe]:FREQuency:STARt", Command(get=lambda p: "1"))
+    >>> tree.find(("FREQ", "star"), ()).get(())
+    '1'
+    """
+
+    def __init__(self) -> None:
+        self._root = _Node()
+        self._known: dict[tuple[str, ...], Command] = {}
+
+    def add(self, header: str, command: Command) -> None:
+        """Add one command."""
+        node = self._root
+        for bracket, word, suffix in re.findall(r"(\[?):?([A-Za-z_*]+)(?:<(\d+)>)?\]?", header):
+            found = next((c for c in node.children if c.long == word), None)
+            if found is None:
+                found = _Node(word, int(suffix or 1), bool(bracket))
+                node.children.append(found)
+            node = found
+        node.command = command
+
+    def find(self, header: tuple[str, ...], path: tuple[str, ...]) -> Command:
+        """The command of a header, seen from the current path.
+
+        Raises
+        ------
+        ScpiError
+            -113 or -114.
+        """
+        whole = (*path, *header)
+        if whole not in self._known:
+            command = self._walk(self._root, whole)
+            if command is None:
+                raise ScpiError(-113, ":".join(whole)[:60])
+            self._known[whole] = command
+        return self._known[whole]
+
+    def _walk(self, node: _Node, words: tuple[str, ...]) -> Command | None:
+        if not words:
+            if node.command is not None:
+                return node.command
+            return next((found for c in node.children if c.optional and (found := self._walk(c, ()))), None)
+        for child in node.children:
+            if child.fits(words[0]) and (found := self._walk(child, words[1:])):
+                return found
+        for child in node.children:
+            if child.optional and (found := self._walk(child, words)):
+                return found
+        return None
