@@ -6,6 +6,7 @@ the medium, and only then renamed. Whoever looks into the records folder sees ei
 
 from __future__ import annotations
 
+import contextlib
 import errno
 import os
 import secrets
@@ -109,13 +110,17 @@ def write(draft: Draft, folder: Path, name: str, signer: Signer, storage: Storag
     return stored
 
 
-def rescue(draft: Draft, name: str, signer: Signer, storage: Storage = DISK) -> Path | None:
-    """Write the record into the system's temporary folder, since its own place refuses it.
+def rescue(
+    draft: Draft, name: str, signer: Signer, storage: Storage = DISK, place: Path | None = None
+) -> Path | None:
+    """Write the record into a new folder in the system's temporary one, since its own place refuses it.
 
     Parameters
     ----------
     draft, name, signer, storage
         As for :func:`write`.
+    place
+        Another folder than the system's temporary one.
 
     Returns
     -------
@@ -123,19 +128,38 @@ def rescue(draft: Draft, name: str, signer: Signer, storage: Storage = DISK) -> 
         The record's folder; None if that place refuses it too.
     """
     try:
-        place = Path(tempfile.gettempdir()) / f"benchrun-rescued-{secrets.token_hex(6)}"
-        return write(draft, place, name, signer, storage)
-    except (OSError, RecordNotWritten):
+        folder = Path(tempfile.mkdtemp(prefix="benchrun-rescued-", dir=place))
+    except OSError:
+        return None
+    try:
+        return write(draft, folder, name, signer, storage)
+    except RecordNotWritten:
+        with contextlib.suppress(OSError):
+            folder.rmdir()
         return None
 
 
-def write_or_rescue(draft: Draft, folder: Path, name: str, signer: Signer, storage: Storage = DISK) -> Path:
+def write_or_rescue(
+    draft: Draft,
+    folder: Path,
+    name: str,
+    signer: Signer,
+    storage: Storage = DISK,
+    place: Path | None = None,
+) -> Path:
     """Write a record; if its place refuses it, rescue it and say where it is.
 
     Parameters
     ----------
     draft, folder, name, signer, storage
         As for :func:`write`.
+    place
+        As for :func:`rescue`.
+
+    Returns
+    -------
+    pathlib.Path
+        The record's folder.
 
     Raises
     ------
@@ -147,7 +171,7 @@ def write_or_rescue(draft: Draft, folder: Path, name: str, signer: Signer, stora
     try:
         return write(draft, folder, name, signer, storage)
     except RecordNotWritten as error:
-        rescued = rescue(draft, name, signer, storage)
+        rescued = rescue(draft, name, signer, storage, place)
         if rescued is None:
             raise
         raise RecordRescued(str(error), rescued) from error

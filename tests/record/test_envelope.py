@@ -8,7 +8,7 @@ import json
 import pytest
 from securesystemslib.dsse import Envelope as TheirEnvelope
 from securesystemslib.exceptions import VerificationError
-from securesystemslib.signer import CryptoSigner, SSlibKey
+from securesystemslib.signer import CryptoSigner, SSlibKey  # type: ignore[attr-defined]
 
 from benchrun.errors import CouldNotCheck, SignatureWrong
 from benchrun.record.envelope import PAYLOAD_TYPE, Envelope, Signature, pae, parse, sign

@@ -8,7 +8,7 @@ import sys
 import pytest
 from cryptography.hazmat.primitives.asymmetric import ec
 from cryptography.hazmat.primitives.serialization import Encoding, NoEncryption, PrivateFormat
-from securesystemslib.signer import CryptoSigner
+from securesystemslib.signer import CryptoSigner  # type: ignore[attr-defined]
 
 from benchrun.errors import InputError, RecordError
 from benchrun.record.signer import FileSigner, TokenSigner, from_securesystemslib
