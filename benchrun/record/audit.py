@@ -28,7 +28,7 @@ _TINY = {"s": 1e-21}
 """Differences that count as none, in the figure's unit; 1e-12 for all other units."""
 
 
-class ResultWrong(RecordError):  # noqa: N818  (named like its sisters in benchrun.errors)
+class ResultWrong(RecordError):
     """The recorded result does not follow from the recorded readings.
 
     Parameters

@@ -216,7 +216,7 @@ def test_unknown_beginning_is_refused(store: KeyStore, beginning: str, said: str
 def test_key_speaks_for_one_purpose_only(store: KeyStore) -> None:
     """A rehearsal key cannot be made a bench key by trusting it again."""
     pem = store.rehearsal().public_key.pem
-    with pytest.raises(InputError, match="is trusted as a rehearsal key .* cannot be a bench key too"):
+    with pytest.raises(InputError, match=r"is trusted as a rehearsal key .* cannot be a bench key too"):
         store.trust(pem, "hall 2")
     assert store.trusted("bench") == ()
 
