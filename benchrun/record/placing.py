@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import os
-import secrets
+from collections.abc import Callable
 from pathlib import Path
 
 from benchrun.errors import RecordError
@@ -39,7 +39,9 @@ def read_bytes(path: Path) -> bytes:
         raise RecordError(f"{path} cannot be read: {error.strerror or error}") from error
 
 
-def place_new(path: Path, content: bytes, *, private: bool = False) -> bool:
+def place_new(
+    path: Path, content: bytes, *, private: bool = False, link: Callable[[Path, Path], None] = os.link
+) -> bool:
     """Put a file where none is.
 
     Parameters
@@ -50,6 +52,8 @@ def place_new(path: Path, content: bytes, *, private: bool = False) -> bool:
         All of it.
     private
         Whether only the user may read it.
+    link
+        Gives the file of the first path the name of the second; OSError where there are no links.
 
     Returns
     -------
@@ -64,7 +68,7 @@ def place_new(path: Path, content: bytes, *, private: bool = False) -> bool:
     work = _write_beside(path, content, 0o600 if private else 0o644)
     try:
         # A link fails if the name is taken, where a rename would overwrite on POSIX.
-        path.hardlink_to(work)
+        link(work, path)
     except FileExistsError:
         return False
     except OSError:
@@ -91,7 +95,7 @@ def place_over(path: Path, content: bytes) -> None:
 
 
 def _write_beside(path: Path, content: bytes, mode: int) -> Path:
-    work = path.with_name(f".{path.name}.{secrets.token_hex(6)}")
+    work = path.with_name(f".{path.name}.{os.urandom(6).hex()}")
     try:
         path.parent.mkdir(parents=True, exist_ok=True, mode=0o700)
         _write_exclusive(work, content, mode)

@@ -9,8 +9,6 @@ from __future__ import annotations
 import contextlib
 import errno
 import os
-import secrets
-import tempfile
 from pathlib import Path
 
 from benchrun.errors import RecordError, RecordNotWritten
@@ -93,7 +91,7 @@ def write(draft: Draft, folder: Path, name: str, signer: Signer, storage: Storag
         If the system refused; nothing of the record was left behind.
     """
     contents = _contents(draft, name, signer)
-    work = folder / f".{name}.{secrets.token_hex(6)}.partial"
+    work = folder / f".{name}.{os.urandom(6).hex()}.partial"
     stored = work
     try:
         storage.make_dir(folder)
@@ -127,6 +125,9 @@ def rescue(
     pathlib.Path or None
         The record's folder; None if that place refuses it too.
     """
+    # Imported here: a run that writes where it should never needs it.
+    import tempfile
+
     try:
         folder = Path(tempfile.mkdtemp(prefix="benchrun-rescued-", dir=place))
     except OSError:
