@@ -158,8 +158,9 @@ def _risk(margin: float, expanded: float | None, accepted: bool) -> float | None
     """JCGM 106:2012, one-sided conformance probability Phi(margin / u)."""
     if expanded is None:
         return None
-    if expanded == 0:
+    standard = expanded / COVERAGE_FACTOR
+    if standard == 0:
         return float(accepted != (margin >= 0))
     # The tail itself, never one less its complement: small risks keep their digits.
-    distance = margin / (expanded / COVERAGE_FACTOR) / math.sqrt(2.0)
+    distance = margin / standard / math.sqrt(2.0)
     return 0.5 * math.erfc(distance if accepted else -distance)
