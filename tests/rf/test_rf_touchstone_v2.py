@@ -98,18 +98,14 @@ def test_a_lower_count_than_the_data_is_refused() -> None:
 
 
 alphabet = st.text(alphabet="0123456789.eE+-# \t\r\n!RSMADBHzGKIYnaif[]Versoi2", max_size=300)
-pieces = st.lists(
-    st.sampled_from(
-        [
-            "# Hz S RI R 50\n", "# GHz S DB R 50\n", "#\n", "1 0 0\n", "2 .5 .5 ", "\n", "! c\n", "nan ", "1e999 ",
-            "[Version] 2.0\n", "[Number of Ports] 1\n", "[Number of Ports] 2\n", "[Number of Frequencies] 1\n",
-            "[Two-Port Data Order] 21_12\n", "[Reference] 50\n", "[Network Data]\n", "[Noise Data]\n", "[End]\n",
-            "[Matrix Format] Lower\n", "1 2 3 4 5 6 7 8 9\n", "-1 0 0\n", "1e400 1e400 1e400\n", "\x00", "[", "]",
-            "[Begin Information]\n", "[End Information]\n", "[Mixed-Mode Order] S1 S2\n", "# Hz Z MA R 1e-320\n",
-        ]
-    ),
-    max_size=14,
-).map("".join)  # fmt: skip
+PIECES = (
+    "# Hz S RI R 50\n", "# GHz S DB R 50\n", "#\n", "1 0 0\n", "2 .5 .5 ", "\n", "! c\n", "nan ", "1e999 ",
+    "[Version] 2.0\n", "[Number of Ports] 1\n", "[Number of Ports] 2\n", "[Number of Frequencies] 1\n",
+    "[Two-Port Data Order] 21_12\n", "[Reference] 50\n", "[Network Data]\n", "[Noise Data]\n", "[End]\n",
+    "[Matrix Format] Lower\n", "1 2 3 4 5 6 7 8 9\n", "-1 0 0\n", "1e400 1e400 1e400\n", "\x00", "[", "]",
+    "[Begin Information]\n", "[End Information]\n", "[Mixed-Mode Order] S1 S2\n", "# Hz Z MA R 1e-320\n",
+)  # fmt: skip
+pieces = st.lists(st.sampled_from(PIECES), max_size=14).map("".join)
 
 
 def judge(data: bytes, name: str) -> None:
