@@ -23,8 +23,7 @@
 A failed limit is a result and never an exception. ``Stopped`` derives from ``BaseException``
 so that no ``except Exception`` between the operator and the safe state can swallow it.
 
-The room imports nothing of the project. Names say what happened; only the branches that read as nouns
-of their own end in "Error" (so the naming rule N818 is set aside line by line).
+The room imports nothing of the project.
 """
 
 from __future__ import annotations
@@ -122,7 +121,7 @@ class InputError(BenchError, ValueError):
         return type(self), (self.problems,)
 
 
-class _Exchange(BenchError):  # noqa: N818
+class _Exchange(BenchError):
     """Base of errors that belong to one exchange with one instrument."""
 
     def __init__(self, message: str, *, resource: str = "", request: str = "") -> None:
@@ -154,11 +153,11 @@ class TransportError(_Exchange):
     """The line to an instrument did not carry a whole message."""
 
 
-class ResourceNotFound(TransportError):  # noqa: N818
+class ResourceNotFound(TransportError):
     """Nothing answers under this VISA resource name."""
 
 
-class DeadlineExceeded(TransportError):  # noqa: N818
+class DeadlineExceeded(TransportError):
     """No whole answer came within the time that the request may take.
 
     Parameters
@@ -181,7 +180,7 @@ class DeadlineExceeded(TransportError):  # noqa: N818
         self.limit_s = limit_s
 
 
-class ConnectionLost(TransportError):  # noqa: N818
+class ConnectionLost(TransportError):
     """The line was closed from the other side, or cannot be used any more."""
 
 
@@ -236,7 +235,7 @@ class IdentityError(_Exchange):
         self.found = found
 
 
-class InvalidMeasurement(BenchError):  # noqa: N818
+class InvalidMeasurement(BenchError):
     """A reading cannot be trusted, so nothing may be concluded about the unit.
 
     Parameters
@@ -262,19 +261,19 @@ class RecordError(BenchError):
     exit_code = 5
 
 
-class RecordNotWritten(RecordError):  # noqa: N818
+class RecordNotWritten(RecordError):
     """The record could not be stored; nothing half-written was left behind."""
 
 
-class SignatureWrong(RecordError):  # noqa: N818
+class SignatureWrong(RecordError):
     """The signature was checked and does not fit the bytes, or the key is not trusted."""
 
 
-class DigestWrong(RecordError):  # noqa: N818
+class DigestWrong(RecordError):
     """A file of the record is missing, added, or is not the file that was signed."""
 
 
-class CouldNotCheck(RecordError):  # noqa: N818
+class CouldNotCheck(RecordError):
     """The check itself could not be made; this is not a verdict of "good"."""
 
 
