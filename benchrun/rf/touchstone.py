@@ -228,10 +228,10 @@ def _read_version_2(text: str, name: str) -> TouchstoneData:
             z0 = np.unique(network.z0)
     except Exception as error:  # scikit-rf has no error class of its own
         raise fail(f"cannot be read as Touchstone 2: {type(error).__name__} {error}"[:300]) from error
-    if len(z0) != 1 or not z0[0].real > 0 or not np.isfinite(z0[0]):
-        raise fail(f"has its ports at {np.array2string(z0.real)} ohm", "One reference resistance is needed.")
     if s.shape != (len(f_hz), int(ports[1]), int(ports[1])) or not len(f_hz):
         raise fail("holds no whole set of data", "The file is cut off.")
+    if len(z0) != 1 or not z0[0].real > 0 or not np.isfinite(z0[0]):
+        raise fail(f"has its ports at {np.array2string(z0.real)} ohm", "One reference resistance is needed.")
     counted = re.search(r"^[ \t]*\[number of frequencies\][ \t]*([0-9]{1,9})\b", text, re.I | re.M)
     if counted is None or int(counted[1]) != len(f_hz):
         said = counted[1] if counted else "nothing"

@@ -71,6 +71,12 @@ def test_a_sample_exactly_on_the_threshold_is_the_corner() -> None:
     assert_allclose(edge(np.array([1.0, 2.0, 3.0]), np.array([0.0, -3.0, -9.0]), 3.0, True), 2.0)
 
 
+def test_the_last_sample_exactly_on_the_threshold_is_still_a_corner() -> None:
+    """The response has fallen by the drop, not by more: equality belongs to the corner."""
+    assert_allclose(edge(np.array([1.0, 2.0, 3.0]), np.array([0.0, -1.0, -3.0]), 3.0, True), 3.0)
+    assert_allclose(edge(np.array([1.0, 2.0, 3.0]), np.array([-3.0, -1.0, 0.0]), 3.0, False), 1.0)
+
+
 def test_of_several_crossings_the_nearest_to_the_peak_counts() -> None:
     """A stop band that comes back later does not move the corner."""
     f_hz = np.arange(1.0, 9.0)

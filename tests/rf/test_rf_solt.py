@@ -86,6 +86,19 @@ def test_the_device_is_found_again_and_scikit_rf_agrees(
     assert differ(mine, SOLT.examiner(F_HZ, (1, 2), kit, readings, isolation)(raw)) < 1e-9
 
 
+@pytest.mark.parametrize("seed", range(4))
+def test_a_thru_that_is_not_the_same_from_both_sides(seed: int, random_terms, random_device) -> None:
+    """An adapter as thru: the reverse terms must see it turned round."""
+    truth, kit = random_terms(seed), kit_with("flush")
+    s21 = np.exp(-2j * np.pi * F_HZ * 40e-12) * 0.97
+    adapter = TwoPort(np.full(11, 0.06 - 0.02j), s21, s21, np.full(11, -0.03 + 0.08j))
+    readings = {**readings_of(truth, kit), THRU: truth.embed(adapter)}
+    definitions = {**define(kit, SOLT.standards, F_HZ), "thru": adapter}
+    solved, device = SOLT.solve((1, 2), definitions, readings), random_device(seed)
+    assert isinstance(solved, TwelveTerms)
+    assert_allclose(solved.correct(truth.embed(device)).matrix, device.matrix, atol=1e-11)
+
+
 def test_isolation_left_out_stays_in_the_device(random_terms) -> None:
     """Leakage of 1e-3 makes a 100 dB device look like 60 dB; reading it gives the 100 dB back."""
     truth, kit = random_terms(7, isolation=1e-3), kit_with("offset")

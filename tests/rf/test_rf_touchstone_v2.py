@@ -81,6 +81,8 @@ def test_a_one_port_of_version_2() -> None:
         (version_2(data="1 .1 0 .21 0 .12"), "a.ts: "),
         (version_2(data="1 one 0 .21 0 .12 0 0 0"), "a.ts: cannot be read as Touchstone 2"),
         (version_2(data=""), "a.ts: "),
+        (version_2(data="", count="0"), "a.ts: holds no whole set of data. The file is cut off."),
+        (version_2(extra="[Number of Ports] 1"), "a.ts: "),
         (
             b"[Version] 2.0\n# GHz S MA R 50\n[Number of Ports] 2\n",
             "a.ts: has no [Network Data]. The file is cut",
