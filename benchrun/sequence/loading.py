@@ -27,7 +27,7 @@ MAX_DEPTH = 40
 Place: TypeAlias = tuple[int, int]
 _FORBIDDEN = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029\ufeff\ufffe\uffff]")
 """What YAML 1.2.2, 5.1, calls not printable, and line ends that editors and parsers count differently."""
-_SUSPECT = re.compile(f"{_FORBIDDEN.pattern}|\t")
+_TAB_INDENT = re.compile(r"^ *\t", re.MULTILINE)  # a tab after content is only ugly
 _INTEGER = re.compile(r"[-+]?[0-9]+")
 _FLOAT = re.compile(r"[-+]?(\.[0-9]+|[0-9]+(\.[0-9]*)?)([eE][-+]?[0-9]+)?")
 _WORDS: dict[str, Any] = {
@@ -158,13 +158,13 @@ def _text(raw: bytes, name: str) -> str:
                 f"is not UTF-8 text (byte 0x{raw[error.start]:02X})", name, line, column, "Save it as UTF-8."
             )
         ) from None
-    for match in _SUSPECT.finditer(text):
-        line = text.count("\n", 0, match.start()) + 1
-        column = match.start() - text.rfind("\n", 0, match.start())
-        tab = match[0] == "\t"
-        if tab and text[text.rfind("\n", 0, match.start()) + 1 : match.start()].strip():
-            continue  # a tab after content is only ugly
-        what = "a tab in the indentation" if tab else _control(match[0])
+    found = [m for m in (_FORBIDDEN.search(text), _TAB_INDENT.search(text)) if m]
+    if found:
+        first = min(found, key=lambda m: m.end())
+        at = first.end() - 1
+        line, column = text.count("\n", 0, at) + 1, at - text.rfind("\n", 0, at)
+        tab = text[at] == "\t"
+        what = "a tab in the indentation" if tab else _control(text[at])
         raise InputError(
             Problem(f"has {what}", name, line, column, "Indent with spaces." if tab else "Remove it.")
         )

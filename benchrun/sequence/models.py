@@ -163,7 +163,9 @@ class Sequence(FileModel):
     title: str = Field(min_length=1, max_length=120)
     unit: Unit
     cautions: Annotated[tuple[str, ...], Listed] = ()
-    sweeps: dict[Name, SweepSetup] = Field(min_length=1, max_length=100)
+    sweeps: dict[Name, SweepSetup] = Field(
+        min_length=1, max_length=100, json_schema_extra={"additionalProperties": False}
+    )
     entries: Annotated[tuple[Entry, ...], Listed] = Field(alias="steps", min_length=1, max_length=1000)
 
     @property

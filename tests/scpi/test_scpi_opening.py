@@ -20,7 +20,7 @@ def test_an_unknown_library_is_told(library):
     assert 'write library: "@py"' in str(caught.value)
 
 
-@pytest.mark.parametrize("resource", ["", "nonsense", "TCPIP::127.0.0.1::port::SOCKET"])
+@pytest.mark.parametrize("resource", ["", "nonsense", "TCPIP::::SOCKET"])
 def test_an_unknown_resource_is_told(py_manager, resource):
     with pytest.raises(ResourceNotFound) as caught:
         open_session(py_manager, resource, SystemClock(), Transcript())

@@ -15,7 +15,8 @@ from benchrun.scpi.faults import CODES, is_dead, translate
 from benchrun.scpi.keywords import compound, matches, short_form
 
 FORMS = [
-    "FREQuency=FREQ", "STARt=STAR", "POINts=POIN", "TIME=TIME", "TRACe=TRAC", "VOLTage=VOLT", "BANDwidth=BAND",
+    "FREQuency=FREQ", "STARt=STAR", "POINts=POIN", "TIME=TIME", "TRACe=TRAC", "VOLTage=VOLT",
+    "BANDwidth=BAND",
     "ASCii=ASC", "ERRor=ERR", "DELay=DEL", "COUNt=COUN", "LEVel=LEV", "SLOPe=SLOP", "POSitive=POS",
     "IMAGinary=IMAG", "SYSTem=SYST", "SENSe=SENS", "FORMat=FORM", "BORDer=BORD", "MODE=MODE", "CENTer=CENT",
     "SPAN=SPAN", "POWer=POW", "TRIGger=TRIG", "AVERage=AVER", "SWEep=SWE", "SOURce=SOUR", "IMMediate=IMM",
