@@ -1,5 +1,7 @@
 """Slips in a sequence: each is told at its line and column, with what to do."""
 
+# ruff: noqa: E501 - the table reads as one slip a line
+
 from __future__ import annotations
 
 import pytest

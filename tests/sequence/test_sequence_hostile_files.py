@@ -58,9 +58,7 @@ def test_a_hostile_file_ends_in_bounded_time(problems, name):
 def test_a_file_of_ten_megabytes_is_not_read(tmp_path):
     big = tmp_path / "big.yaml"
     big.write_bytes(b"sequence: x\n" + b"#" * 10_000_000)
-    with pytest.raises(
-        InputError, match=r"big\.yaml: is 10,000,012 bytes long, at most 1,000,000 are allowed"
-    ):
+    with pytest.raises(InputError, match=r"big\.yaml: is 10,000,012 bytes long, at most 1,000,000 are"):
         read(big, KINDS["sequence"])
 
 
@@ -84,8 +82,8 @@ def _installed() -> Iterator[tuple[str, bytes]]:
 
 
 GOOD_FILES = list(_installed())
-PIECES = [b": ", b"- ", b"{", b"}", b"[", b"]", b"\n", b" ", b'"', b"'", b"#", b"&a ", b"*a", b"!", b"%", b"\t",
-          b"\0", b"\xff", b"\xe2\x80\xa8", b"?", b"|", b">", b"---", b"~", b"1", b"-1e999", b".nan", b"0x1F",
+PIECES = [b": ", b"- ", b"{", b"}", b"[", b"]", b"\n", b" ", b'"', b"'", b"#", b"&a ", b"*a", b"!", b"%",
+          b"\t",          b"\0", b"\xff", b"\xe2\x80\xa8", b"?", b"|", b">", b"---", b"~", b"1", b"-1e999", b".nan", b"0x1F",
           b"MHz", b"dB", b"to", b"true", b",", b"steps", b"sweep", b"judge", b"\\x00", b"\x85"]  # fmt: skip
 
 
@@ -115,6 +113,9 @@ def _gives_a_model_or_places(kind: str, raw: bytes) -> None:
 @given(mutations())
 def test_a_mutated_file_gives_a_model_or_places(mutation):
     _gives_a_model_or_places(*mutation)
+
+
+_TEXT = st.text(max_size=200).map(lambda text: text.encode("utf-8", "surrogatepass"))
 
 
 @settings(max_examples=150, deadline=None)

@@ -96,7 +96,7 @@ def test_ports_of_a_bench_are_named_alike(installed, load_text, port):
 
 
 QUANTITIES = [
-    (Dimension.FREQUENCY, ["169.4 MHz", "1e6 Hz", ".5 GHz", "5MHz"], ["5", "5 dB", "MHz", "5 mhz", "1 2 MHz"]),
+    (Dimension.FREQUENCY, ["169.4 MHz", "1e6 Hz", ".5 GHz", "5MHz"], ["5", "5 dB", "MHz", "5 mhz"]),
     (Dimension.TIME, ["8 h", "20 ms", "3 min", "1 d", "2 sec"], ["8 kh", "8 kmin", "8"]),
     (Dimension.IMPEDANCE, ["50 ohm", "1 kohm", "50 Ω"], ["50", "50 R"]),
     (Dimension.POWER, ["-10 dBm", "+3.5 dBm"], ["-10 dB", "1 mdBm", "-10"]),
