@@ -19,7 +19,15 @@ from benchrun.record.signer import Signer
 from benchrun.record.statement import build
 from benchrun.record.storage import DISK, Storage
 
-__all__ = ["MAX_FILE_BYTES", "PUBLIC_KEY_FILE", "RecordRescued", "rescue", "write", "write_or_rescue"]
+__all__ = [
+    "MAX_FILE_BYTES",
+    "PUBLIC_KEY_FILE",
+    "RecordRescued",
+    "refusal",
+    "rescue",
+    "write",
+    "write_or_rescue",
+]
 
 PUBLIC_KEY_FILE = "public-key.pem"
 """The signer's public half in the record, for whoever has only openssl; trust never comes from it."""
@@ -100,7 +108,7 @@ def write(draft: Draft, folder: Path, name: str, signer: Signer, storage: Storag
         storage.sync(folder)
     except OSError as error:
         left = _remove(work, stored, storage)
-        raise RecordNotWritten(_sentence(folder, error) + left) from error
+        raise RecordNotWritten(str(refusal(folder, error)) + left) from error
     except BaseException:
         # A stop while writing: the caller may rescue the draft, a half record helps nobody.
         _remove(work, stored, storage)
@@ -264,7 +272,8 @@ def _remove(work: Path, stored: Path, storage: Storage) -> str:
     return ""
 
 
-def _sentence(folder: Path, error: OSError) -> str:
+def refusal(folder: Path, error: OSError) -> RecordNotWritten:
+    """What to say when the system refuses to store anything in a folder of records."""
     said = error.strerror or str(error)
     advice = _ADVICE.get(error.errno or 0, "see to it, or give another folder with --records")
-    return f"the record was not written into {folder}: the system said {said!r}; {advice}."
+    return RecordNotWritten(f"the record was not written into {folder}: the system said {said!r}; {advice}.")

@@ -79,6 +79,7 @@ def _one(name: str, data: TouchstoneData, grid: FloatArray | None, z0: float) ->
         error = max(resampling_error(data.f_hz, plane, grid) for plane in planes)
         if error > _COARSE:
             yield (
-                f"{name} has {len(data.f_hz)} points, too few to fill in between: the error may reach {error:.1e}",
+                f"{name} has {len(data.f_hz)} points, too few to fill in between: "
+                f"the error may reach {error:.1e}",
                 "Use a file with closer points, best on the sweep's own frequencies.",
             )

@@ -42,5 +42,7 @@ def outside(low: float, high: float, grid: FloatArray) -> bool:
 
 
 def span(low: float, high: float) -> str:
-    """Write a band for people."""
+    """Write a band, or a single frequency, for people."""
+    if low == high:
+        return render(float(low), Dimension.FREQUENCY)
     return f"{render(float(low), Dimension.FREQUENCY)} to {render(float(high), Dimension.FREQUENCY)}"

@@ -1,0 +1,1 @@
+"""The command line: one file a command; parses, calls, prints; imports heavy things late."""

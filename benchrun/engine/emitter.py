@@ -1,0 +1,49 @@
+"""Telling what happens: to whoever listens, and into the journal that the record keeps."""
+
+from __future__ import annotations
+
+import dataclasses
+import json
+
+from benchrun.clock import Clock
+from benchrun.engine.events import Event, Sink
+
+__all__ = ["Emitter"]
+
+
+class Emitter:
+    """Sends events, with their time, to a sink and keeps them.
+
+    A screen that cannot be written to (a closed pipe, say) loses its events, never the run.
+
+    Parameters
+    ----------
+    sink
+        Who listens.
+    clock
+        Bench time.
+    """
+
+    def __init__(self, sink: Sink, clock: Clock) -> None:
+        self._sink: Sink | None = sink
+        self._clock = clock
+        self._start = clock.seconds()
+        self.events: list[Event] = []
+
+    def seconds(self) -> float:
+        """Bench seconds since the run began."""
+        return round(self._clock.seconds() - self._start, 6)
+
+    def __call__(self, event: Event) -> None:
+        """Tell."""
+        event = dataclasses.replace(event, at_s=self.seconds())
+        self.events.append(event)
+        if self._sink is not None:
+            try:
+                self._sink(event)
+            except OSError:
+                self._sink = None
+
+    def as_json_lines(self) -> bytes:
+        """The journal: one JSON object a line."""
+        return "".join(json.dumps(e.as_json(), ensure_ascii=False) + "\n" for e in self.events).encode()

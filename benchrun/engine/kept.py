@@ -1,0 +1,77 @@
+"""Raw readings of a run, each turned into the file of its record the moment it was taken."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Iterable
+from dataclasses import dataclass, field
+
+from benchrun.record.payload import ReadingEntry, safe_name
+from benchrun.rf.touchstone import write
+from benchrun.rf.twoport import FloatArray, TwoPort
+
+__all__ = ["Kept", "Reading"]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Reading:
+    """One raw reading.
+
+    Parameters
+    ----------
+    step, hookup
+        Which step took it, of what.
+    raw
+        Planes ``(f,)``.
+    contents
+        As Touchstone; reading it back gives the same numbers to the last bit.
+    taken_s
+        Bench seconds since the run began.
+    """
+
+    step: str
+    hookup: str
+    raw: TwoPort
+    contents: bytes
+    sha256: str
+    taken_s: float
+
+    @classmethod
+    def of(cls, step: str, hookup: str, f_hz: FloatArray, raw: TwoPort, taken_s: float) -> Reading:
+        """From planes ``(f,)`` on a grid ``(f,)``."""
+        contents = write(f_hz, raw, f"raw: {hookup}")
+        return cls(step, hookup, raw, contents, hashlib.sha256(contents).hexdigest(), taken_s)
+
+    def entry(self, number: int) -> ReadingEntry:
+        """As the payload lists it."""
+        file = f"raw/{self.step}/{number:02d}-{safe_name(self.hookup)}.s2p"
+        return ReadingEntry(step=self.step, hookup=self.hookup, file=file, taken_s=self.taken_s)
+
+
+@dataclass(slots=True)
+class Kept:
+    """The readings of one unit's record, in the order of taking."""
+
+    readings: list[Reading] = field(default_factory=list)
+
+    def add(self, reading: Reading) -> Reading:
+        """Keep one."""
+        self.readings.append(reading)
+        return reading
+
+    def extend(self, readings: Iterable[Reading]) -> None:
+        """Keep those that an earlier unit's calibration was made of."""
+        self.readings.extend(readings)
+
+    def of(self, step: str) -> dict[str, TwoPort]:
+        """Raw readings of a step by hook-up."""
+        return {r.hookup: r.raw for r in self.readings if r.step == step}
+
+    def files(self) -> tuple[list[ReadingEntry], dict[str, bytes]]:
+        """Entries for the payload, and contents by path."""
+        entries, contents = [], {}
+        for number, reading in enumerate(self.readings, 1):
+            entry = reading.entry(number)
+            entries.append(entry)
+            contents[entry.file] = reading.contents
+        return entries, contents

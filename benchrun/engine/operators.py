@@ -1,0 +1,98 @@
+"""Who answers when hands are needed: a person, nobody, or whoever a rehearsal brings."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Protocol
+
+from benchrun.errors import InputError, Stopped
+from benchrun.hookup import Hookup
+
+__all__ = ["Nobody", "Operator", "Person"]
+
+
+class Operator(Protocol):
+    """Hands."""
+
+    def check(self, hookups: tuple[Hookup, ...]) -> None:
+        """Say before the run whether these connections can be made.
+
+        Raises
+        ------
+        InputError
+            If not.
+        """
+        ...
+
+    def offer(self, serial: str) -> None:
+        """Lay a unit on the bench.
+
+        Raises
+        ------
+        InputError
+            If there is no such unit.
+        """
+        ...
+
+    def connect(self, hookup: Hookup) -> None:
+        """Make a connection, and come back when it stands.
+
+        Raises
+        ------
+        Stopped
+            If the operator ends the run.
+        """
+        ...
+
+
+class Person:
+    """A person at the bench.
+
+    Parameters
+    ----------
+    ask
+        Shows a request and waits for a line; an answer that means "stop" ends the run.
+    """
+
+    _STOP = frozenset({"stop", "s", "quit", "q"})
+
+    def __init__(self, ask: Callable[[str], str]) -> None:
+        self._ask = ask
+
+    def check(self, hookups: tuple[Hookup, ...]) -> None:
+        """A person can connect anything."""
+
+    def offer(self, serial: str) -> None:
+        """The label is read when the unit is connected."""
+        self._serial = serial
+
+    def connect(self, hookup: Hookup) -> None:
+        """Ask, and wait for Enter."""
+        text = hookup.text
+        if any("unit" in c.items for c in hookup.connections):
+            text = text.replace("unit", f"unit {self._serial}")
+        try:
+            answer = self._ask(f"Connect {text}")
+        except EOFError:
+            raise Stopped("nobody answered: the input ended") from None
+        if answer.strip().lower() in self._STOP:
+            raise Stopped
+
+
+class Nobody:
+    """No hands at all: a run that needs one connection, which stands already."""
+
+    def check(self, hookups: tuple[Hookup, ...]) -> None:
+        """Refuse a run that needs anything connected in between."""
+        if len(hookups) > 1:
+            first, second = hookups[0].text, hookups[1].text
+            raise InputError(
+                f"the sequence needs {len(hookups)} different connections (first {first}, then {second}), "
+                "and nobody is there to make them; run it without --unattended"
+            )
+
+    def offer(self, serial: str) -> None:
+        """It is in place already."""
+
+    def connect(self, hookup: Hookup) -> None:
+        """It stands already."""

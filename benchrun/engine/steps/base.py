@@ -1,0 +1,99 @@
+"""What a step kind contributes to a run, and what it finds there."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Protocol, TypeVar
+
+from benchrun.clock import Clock
+from benchrun.engine.emitter import Emitter
+from benchrun.engine.events import Noted, Prompted, ReadingTaken
+from benchrun.engine.kept import Kept, Reading
+from benchrun.engine.operators import Operator
+from benchrun.evaluate.chain import apply, hookups
+from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.state import State
+from benchrun.hookup import Hookup
+from benchrun.instruments.analyzer import NetworkAnalyzer, SweepSettings
+from benchrun.sequence.steps import StepModel
+
+__all__ = ["AtWork", "Execution", "carry_out"]
+
+S = TypeVar("S", bound=StepModel, contravariant=True)
+
+
+@dataclass(slots=True)
+class AtWork:
+    """What a step may use.
+
+    Parameters
+    ----------
+    procedure, state
+        The arithmetic, and what it has found for this unit.
+    analyzer, operator, clock
+        The bench.
+    kept
+        Readings of this unit's record; :meth:`Kept.add` makes them safe.
+    emit
+        Says what happens.
+    standing
+        What is connected now; hands are asked only for a change.
+    """
+
+    procedure: Procedure
+    state: State
+    analyzer: NetworkAnalyzer
+    operator: Operator
+    clock: Clock
+    kept: Kept
+    emit: Emitter
+    standing: Hookup | None = None
+
+
+class Execution(Protocol[S]):
+    """One step kind."""
+
+    def words(self, step: S, work: AtWork) -> str:
+        """What the step will do, in a few words."""
+        ...
+
+    def carry_out(self, step: S, work: AtWork) -> None:
+        """Do it.
+
+        Raises
+        ------
+        BenchError
+            If an instrument or a reading cannot be trusted.
+        Stopped
+            If the operator ends the run.
+        """
+        ...
+
+
+def carry_out(step: StepModel, work: AtWork) -> None:
+    """Read what a step needs read, then do its arithmetic: all that most kinds need."""
+    needed = hookups(step, work.procedure)
+    if needed:
+        setup = work.procedure.sequence.sweep_of(step)
+        spacing = "list" if setup.at is not None else setup.spacing
+        settings = SweepSettings(setup.grid(), spacing, setup.bandwidth, setup.power, setup.averages)
+        work.analyzer.set_up(settings)
+        for hookup in needed:
+            if hookup != work.standing:
+                work.emit(Prompted(hookup=hookup.text))
+                work.operator.connect(hookup)
+                work.standing = hookup
+            if setup.settle:
+                work.clock.wait(setup.settle)
+            raw = work.analyzer.sweep().raw
+            reading = work.kept.add(
+                Reading.of(step.name, hookup.text, settings.grid_hz, raw, work.emit.seconds())
+            )
+            work.emit(
+                ReadingTaken(
+                    step=step.name, hookup=hookup.text, points=len(settings.grid_hz), sha256=reading.sha256
+                )
+            )
+    apply(step, work.state, work.kept.of(step.name))
+    if step.name in work.state.agreements:
+        work.emit(Noted(text=f"scikit-rf agrees within {work.state.agreements[step.name]:.0e}"))

@@ -1,0 +1,47 @@
+"""A procedure from the bytes of its files: the same for a plan and for the copies kept in a record."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from benchrun.evaluate.procedure import NOISE_SEED, Procedure
+from benchrun.rf.touchstone import read as read_touchstone
+from benchrun.sequence.bench import Bench
+from benchrun.sequence.files import load_model
+from benchrun.sequence.kit import KitFile
+from benchrun.sequence.mask import MaskFile
+from benchrun.sequence.models import Sequence
+
+__all__ = ["build"]
+
+
+def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure:
+    """A procedure.
+
+    Parameters
+    ----------
+    files
+        By logical name: ``"sequence"``, ``"bench"``, ``"kit:NAME"``, ``"mask:NAME"``, ``"fixture:NAME"``,
+        each NAME as the sequence writes it.
+    noise_seed
+        Of the noise draws.
+
+    Raises
+    ------
+    InputError
+        If a file is not what its name says.
+    KeyError
+        If the sequence or the bench is missing.
+    """
+
+    def of(kind: str) -> dict[str, bytes]:
+        return {name.split(":", 1)[1]: raw for name, raw in files.items() if name.startswith(f"{kind}:")}
+
+    return Procedure(
+        load_model(files["sequence"], "sequence", Sequence).model,
+        {name: load_model(raw, name, KitFile).model.build() for name, raw in of("kit").items()},
+        {name: load_model(raw, name, MaskFile).model.build() for name, raw in of("mask").items()},
+        {name: read_touchstone(raw, name) for name, raw in of("fixture").items()},
+        load_model(files["bench"], "bench", Bench).model.uncertainty.terms,
+        noise_seed,
+    )

@@ -1,0 +1,27 @@
+"""Results of a state as Touchstone files: the bytes that a record keeps and an audit makes again."""
+
+from __future__ import annotations
+
+from benchrun.evaluate.state import State
+from benchrun.rf.touchstone import write
+
+__all__ = ["result_files"]
+
+
+def result_files(state: State) -> dict[tuple[str, str], tuple[str, bytes]]:
+    """Corrected and de-embedded networks.
+
+    Returns
+    -------
+    dict
+        By step and kind (``"corrected"`` or ``"de-embedded"``): path inside a record, and contents.
+    """
+    found = {}
+    for step, network in state.networks.items():
+        kind = state.kinds[step]
+        if kind == "uncorrected":  # the raw reading itself is kept already
+            continue
+        path = f"{kind}/{step}.s{network.ports}p"
+        contents = write(network.f_hz, network.nominal, f"{step}: {kind}", network.z0_ohm)
+        found[step, kind] = path, contents
+    return found

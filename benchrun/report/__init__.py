@@ -1,0 +1,1 @@
+"""Views of a run: they read events and outcomes, and compute nothing."""
