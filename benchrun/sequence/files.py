@@ -121,12 +121,20 @@ def _problems(document: Document, model: type[BaseModel], error: ValidationError
     found: dict[Problem, None] = {}
     details = error.errors(include_url=False, include_input=True)
     for detail in details[:_MOST_PROBLEMS]:
+        if detail["type"] == "too_short" and _explained(detail, details):
+            continue
         found[_problem(document, model, detail)] = None
     if len(details) > _MOST_PROBLEMS:
         found[
             document.problem(f"has {len(details) - _MOST_PROBLEMS} more problems", advice="Mend these first.")
         ] = None
     return sorted(found, key=lambda problem: (problem.line, problem.column))
+
+
+def _explained(detail: ErrorDetails, details: list[ErrorDetails]) -> bool:
+    """Tell whether a list is too short only because items of it were refused, which is said already."""
+    depth = len(detail["loc"])
+    return any(len(d["loc"]) > depth and d["loc"][:depth] == detail["loc"] for d in details)
 
 
 def _path(document: Document, loc: tuple[int | str, ...]) -> tuple[object, ...]:

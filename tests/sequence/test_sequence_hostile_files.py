@@ -82,9 +82,11 @@ def _installed() -> Iterator[tuple[str, bytes]]:
 
 
 GOOD_FILES = list(_installed())
-PIECES = [b": ", b"- ", b"{", b"}", b"[", b"]", b"\n", b" ", b'"', b"'", b"#", b"&a ", b"*a", b"!", b"%",
-          b"\t",          b"\0", b"\xff", b"\xe2\x80\xa8", b"?", b"|", b">", b"---", b"~", b"1", b"-1e999", b".nan", b"0x1F",
-          b"MHz", b"dB", b"to", b"true", b",", b"steps", b"sweep", b"judge", b"\\x00", b"\x85"]  # fmt: skip
+PIECES = [
+    b": ", b"- ", b"{", b"}", b"[", b"]", b"\n", b" ", b'"', b"'", b"#", b"&a ", b"*a", b"!", b"%",
+    b"\t", b"\0", b"\xff", b"\xe2\x80\xa8", b"?", b"|", b">", b"---", b"~", b"1", b"-1e999", b".nan",
+    b"0x1F", b"MHz", b"dB", b"to", b"true", b",", b"steps", b"sweep", b"judge", b"\\x00", b"\x85",
+]  # fmt: skip
 
 
 @st.composite
