@@ -12,7 +12,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 __all__ = [
-    "Matrix", "Plane", "Real", "both", "chain", "flip", "from_abcd", "join", "line", "seen_through", "thru", "two",
+    "Matrix", "Plane", "Real", "both", "chain", "flip", "from_abcd", "join", "line", "seen_through", "thru",
+    "two",
 ]  # fmt: skip
 
 Matrix: TypeAlias = NDArray[np.complex128]

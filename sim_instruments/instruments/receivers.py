@@ -1,8 +1,9 @@
 """The insides of a simulated network analyzer: couplers, switch, cables, receivers, noise.
 
-Each port is a coupler (directivity, match, tracking) behind which a test cable leads to the reference
-plane. A reading is the chain coupler, cable, device, cable, receiver joined wave by wave; the error terms
-of any calibration model are never used here, they come out of it.
+Each port is a coupler with its receivers (directivity, match, tracking) behind which a test cable leads to
+the reference plane; a switch feeds one port and ends the other. A reading is the chain coupler, cable,
+device, cable, coupler, switch joined wave by wave; the error terms of any calibration model are never used
+here, they come out of it.
 """
 
 from __future__ import annotations
@@ -14,10 +15,13 @@ from typing import Any
 import numpy as np
 
 from sim_instruments.draws import Draws
+from sim_instruments.instruments.ageing import Ageing
+from sim_instruments.instruments.noise import Noise
 from sim_instruments.values import number
 from sim_instruments.waves import Matrix, Plane, Real, chain, flip, join, line, two
+from sim_instruments.world import World
 
-__all__ = ["Receivers", "TrueTerms"]
+__all__ = ["Receivers", "TrueTerms", "WorldReadings"]
 
 
 @dataclass(frozen=True)
@@ -48,8 +52,9 @@ class Receivers:
     ----------
     spec
         ``directivity``, ``source match``, ``load match``, ``isolation`` (dB below one),
-        ``tracking`` (dB rms), ``cable`` (``delay``, ``loss`` at 1 GHz, ``drift`` in 1/K of its delay),
-        ``noise`` (dBm in 1 Hz), ``trace noise`` (dB rms in 1 kHz).
+        ``tracking`` (dB rms), ``cable`` (``delay``, ``loss`` at 1 GHz, ``drift`` in 1/K of its delay,
+        ``bend`` in degrees at 1 GHz for a usual bend); what :class:`Noise` takes: ``noise``, ``trace noise``,
+        ``compression``, ``spurious``; what :class:`Ageing` takes: ``warm-up``, ``on for``, ``drift``.
     draws
         What makes this specimen.
     """
@@ -63,67 +68,110 @@ class Receivers:
         self.tracking_db = number(spec["tracking"])
         cable = spec["cable"]
         self.delay, self.loss_db = number(cable["delay"]), number(cable["loss"])
-        self.drift = number(cable.get("drift", 0.0))
-        self.noise_dbm_hz, self.trace_db = number(spec["noise"]), number(spec["trace noise"])
-        self.noise = draws.generator("noise")
+        self.drift, self.bend_deg = number(cable.get("drift", 0.0)), number(cable.get("bend", 2.0))
+        self._cables = {
+            port: (
+                self.delay * (1 + draws.normal(f"cable {port}", 0.01)),
+                50.0 + draws.normal(f"cable impedance {port}", 0.15),
+                draws.uniform(f"cable bend {port}", -1.0, 1.0),
+            )
+            for port in (1, 2)
+        }
+        self.noise = Noise(spec, draws.generator("noise"))
+        self.ageing = Ageing(spec, draws / "ageing")
         self._fixed: tuple[Real, dict[str, Any]] | None = None
 
-    def raw(self, f_hz: Real, device: Matrix, temperature_c: float) -> Matrix:
-        """Readings without noise, ``(f, 2, 2)``, of a true device between the reference planes."""
+    def raw(
+        self,
+        f_hz: Real,
+        device: Matrix,
+        temperature_c: float,
+        *,
+        reverse: Matrix | None = None,
+        time_s: float = 0.0,
+        bend: float = 0.0,
+    ) -> Matrix:
+        """Readings without noise, ``(f, 2, 2)``, of a true device between the reference planes.
+
+        Parameters
+        ----------
+        f_hz
+            ``(f,)``.
+        device
+            ``(f, 2, 2)``, as it is with port 1 driven.
+        temperature_c
+            Of the room.
+        reverse
+            As it is with port 2 driven, where that differs.
+        time_s
+            Since the world began: warm-up and drift.
+        bend
+            How far the test cables were moved.
+        """
         m = np.empty((len(f_hz), 2, 2), np.complex128)
-        for port in (1, 2):
-            seen = device if port == 1 else flip(device)
-            far = 3 - port
-            whole = chain(
-                self._source(f_hz, port, temperature_c), seen, self._receiver(f_hz, far, temperature_c)
-            )
+        shape = self._shape(f_hz)
+        boxes = {port: self._source(f_hz, port, temperature_c, time_s, bend) for port in (1, 2)}
+        for port, far in ((1, 2), (2, 1)):
+            seen = device if port == 1 else flip(device if reverse is None else reverse)
+            whole = chain(boxes[port], seen, self._ended(flip(boxes[far]), shape[f"switch {far}"]))
             m[:, port - 1, port - 1] = whole[:, 0, 0]
-            m[:, far - 1, port - 1] = whole[:, 1, 0] + self._shape(f_hz)[f"leak {port}"]
+            m[:, far - 1, port - 1] = whole[:, 1, 0] + shape[f"leak {port}"]
         return m
 
     def noisy(self, m: Matrix, bandwidth_hz: float, power_dbm: float, averages: int) -> Matrix:
-        """With noise: a floor that source power lifts readings above, and trace noise in proportion."""
-        root = np.sqrt(1.0 / averages)
-        floor = 10 ** ((self.noise_dbm_hz + 10 * np.log10(bandwidth_hz) - power_dbm) / 20) * root
-        trace = (10 ** (self.trace_db / 20) - 1) * np.sqrt(bandwidth_hz / 1e3) * root
-        draws = self.noise.standard_normal((4, *m.shape)) / np.sqrt(2.0)
-        return np.asarray(m * (1 + trace * (draws[0] + 1j * draws[1])) + floor * (draws[2] + 1j * draws[3]))
+        """With noise, see :class:`Noise`."""
+        return self.noise.on(m, bandwidth_hz, power_dbm, averages)
 
     def nothing(self, points: int) -> Matrix:
         """Readings with the source off: noise over noise."""
-        draws = self.noise.standard_normal((4, points, 2, 2))
-        return np.asarray((draws[0] + 1j * draws[1]) / (draws[2] + 1j * draws[3]))
+        return self.noise.alone(points)
 
-    def true_terms(self, f_hz: Real, port: int, temperature_c: float) -> TrueTerms:
+    def true_terms(
+        self, f_hz: Real, port: int, temperature_c: float, *, time_s: float = 0.0, bend: float = 0.0
+    ) -> TrueTerms:
         """Error terms with ``port`` driven, read off the chain."""
-        near, far = self._source(f_hz, port, temperature_c), self._receiver(f_hz, 3 - port, temperature_c)
+        near = self._source(f_hz, port, temperature_c, time_s, bend)
+        shape, other = self._shape(f_hz), 3 - port
+        far = self._ended(
+            flip(self._source(f_hz, other, temperature_c, time_s, bend)), shape[f"switch {other}"]
+        )
         return TrueTerms(
             directivity=near[:, 0, 0],
             source_match=near[:, 1, 1],
             tracking=near[:, 0, 1] * near[:, 1, 0],
             load_match=far[:, 0, 0],
             transmission=near[:, 1, 0] * far[:, 1, 0],
-            isolation=self._shape(f_hz)[f"leak {port}"],
+            isolation=shape[f"leak {port}"],
         )
 
-    def _source(self, f_hz: Real, port: int, temperature_c: float) -> Matrix:
-        """From the reference receiver of a driven port to its reference plane."""
-        shape = self._shape(f_hz)
-        ones = np.ones(len(f_hz), np.complex128)
-        coupler = two(shape[f"directivity {port}"], ones, shape[f"tracking {port}"], shape[f"source {port}"])
-        return join(coupler, self._cable(f_hz, port, temperature_c))
+    def switch_term(self, f_hz: Real, port: int, temperature_c: float) -> Plane:
+        """What the receivers of the other port see of its switch, ``a/b``, with ``port`` driven, ``(f,)``."""
+        return np.asarray(self._shape(f_hz)[f"switch {3 - port}"])
 
-    def _receiver(self, f_hz: Real, port: int, temperature_c: float) -> Matrix:
-        """From the reference plane of a receiving port to its receiver, ended in the load match."""
+    def _source(self, f_hz: Real, port: int, temperature_c: float, time_s: float, bend: float) -> Matrix:
+        """From the receivers of a port to its reference plane."""
         shape = self._shape(f_hz)
-        zeros = np.zeros(len(f_hz), np.complex128)
-        end = two(shape[f"load {port}"], zeros, shape[f"receive {port}"], zeros)
-        return join(flip(self._cable(f_hz, port, temperature_c)), end)
+        aged = self.ageing.factor(port, time_s, temperature_c)
+        coupler = two(
+            shape[f"directivity {port}"], shape[f"receive {port}"] * aged, shape[f"tracking {port}"],
+            shape[f"source {port}"],
+        )  # fmt: skip
+        return join(coupler, self._cable(f_hz, port, temperature_c, bend))
 
-    def _cable(self, f_hz: Real, port: int, temperature_c: float) -> Matrix:
-        delay = self.delay * (1 + self.draws.normal(f"cable {port}", 0.01))
+    @staticmethod
+    def _ended(box: Matrix, switch: Plane) -> Matrix:
+        """A receiving port: its ``a`` is what its switch throws back of its ``b``; out comes ``b``."""
+        zeros = np.zeros(len(switch), np.complex128)
+        rounds = 1.0 / (1.0 - box[:, 1, 1] * switch)
+        return two(
+            box[:, 0, 0] + box[:, 0, 1] * switch * box[:, 1, 0] * rounds, zeros, box[:, 1, 0] * rounds, zeros
+        )
+
+    def _cable(self, f_hz: Real, port: int, temperature_c: float, bend: float) -> Matrix:
+        delay, z_ohm, way = self._cables[port]
         delay *= 1 + self.drift * (temperature_c - 23.0)
-        return line(f_hz, delay, 50.0 + self.draws.normal(f"cable impedance {port}", 0.15), self.loss_db)
+        delay += bend * way * self.bend_deg / 360.0 / 1e9
+        return line(f_hz, delay, z_ohm, self.loss_db)
 
     def _shape(self, f_hz: Real) -> dict[str, Any]:
         """What depends on frequency alone, kept for the last grid."""
@@ -143,5 +191,34 @@ class Receivers:
                     )
                     shape[f"{name} {port}"] = gain * (1 + _wander(f_hz, self.draws, f"{name} {port}", tilt))
                 shape[f"leak {port}"] = _wander(f_hz, self.draws, f"leak {port}", self.size["isolation"])
+                # The switch ends a receiving port so that the match ahead of its cable is "load".
+                step = shape[f"load {port}"] - shape[f"source {port}"]
+                around = shape[f"tracking {port}"] * shape[f"receive {port}"]
+                shape[f"switch {port}"] = step / (around + shape[f"directivity {port}"] * step)
             self._fixed = f_hz.copy(), shape
         return self._fixed[1]
+
+
+class WorldReadings:
+    """Readings of a world: what an analyzer asks for when a sweep ends."""
+
+    def __init__(self, world: World, receivers: Receivers) -> None:
+        self.world = world
+        self.receivers = receivers
+
+    def read(
+        self, f_hz: Real, bandwidth_hz: float, power_dbm: float, averages: int, source_on: bool
+    ) -> Matrix:
+        """Raw readings ``(f, 2, 2)`` of what is connected now."""
+        if not source_on:
+            return self.receivers.nothing(len(f_hz))
+        world = self.world
+        with world.lock:
+            ahead = world.between_ports(f_hz, power_dbm, 1)
+            back = world.between_ports(f_hz, power_dbm, 2) if world.has_active else None
+            raw = self.receivers.raw(
+                f_hz, ahead, world.temperature(), reverse=back, time_s=world.time_s, bend=world.bend
+            )
+        raw[:, 0, 1] += (spurs := self.receivers.noise.spurs(f_hz, bandwidth_hz, power_dbm))
+        raw[:, 1, 0] += spurs
+        return self.receivers.noisy(raw, bandwidth_hz, power_dbm, averages)

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from sim_instruments.draws import Draws
-from sim_instruments.parts.base import Part, Surroundings
+from sim_instruments.parts.base import Part, Surroundings, known_keys, unknown_fault
 from sim_instruments.values import number
 from sim_instruments.waves import Matrix, Real, chain, flip, from_abcd, line
 
@@ -26,6 +26,9 @@ def fixture(spec: Mapping[str, Any], draws: Draws) -> Part:
     draws
         What makes this jig differ from its file.
     """
+    known_keys(spec, "delay", "impedance", "loss", "launch", "turned", "spread")
+    for fault in spec.get("faults", ()):
+        raise unknown_fault(fault, ())
     spread = spec.get("spread", {})
 
     def drawn(name: str, nominal: float) -> float:

@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from sim_instruments.draws import Draws
-from sim_instruments.parts.base import Part, Surroundings
+from sim_instruments.parts.base import Part, Surroundings, known_keys
 from sim_instruments.values import number, share
 from sim_instruments.waves import Matrix, Plane, Real, from_abcd
 
@@ -18,6 +18,8 @@ __all__ = ["Element", "ladder"]
 
 _OPEN_JOINT_F = 0.03e-12
 """What is left across a cracked solder joint, in farad."""
+_BRIDGE_OHM, _BRIDGE_H = 5e-3, 0.5e-9
+"""A blob of solder."""
 
 
 @dataclass(frozen=True)
@@ -40,6 +42,8 @@ class Element:
         Self-resonance; 0 for none.
     drift_ppm
         Change per kelvin.
+    lead_h
+        Inductance of a resistor's leads.
     broken
         An open solder joint.
     """
@@ -52,6 +56,7 @@ class Element:
     q_at_hz: float = 100e6
     resonance_hz: float = 0.0
     drift_ppm: float = 0.0
+    lead_h: float = 0.0
     broken: bool = False
 
     def impedance(self, f_hz: Real, around: Surroundings) -> Plane:
@@ -70,7 +75,7 @@ class Element:
             if self.resonance_hz:  # lead inductance in line with it
                 z = z + 1j * w / ((2 * np.pi * self.resonance_hz) ** 2 * value)
         else:
-            z = np.full(len(f_hz), value, np.complex128)
+            z = value + 1j * w * self.lead_h
         if self.broken:
             z = z + 1 / (1j * w * _OPEN_JOINT_F)
         return np.asarray(z)
@@ -82,17 +87,20 @@ def ladder(spec: Mapping[str, Any], draws: Draws) -> Part:
     Parameters
     ----------
     spec
-        ``elements``: a list of ``{name, place, coil | capacitor | resistor, q, q at, resonance, tolerance}``;
-        ``faults``: a list such as ``"L2 +15 %"``, ``"open joint at C1"``, ``"C3 = 39 pF"``;
+        ``elements``: a list of ``{name, place, coil | capacitor | resistor, q, q at, resonance, tolerance,
+        spread, drift, lead}``; ``spread``: ``normal`` (tolerance is two sigma) or ``uniform`` (its limits);
+        ``faults``: a list such as ``"L2 +15 %"``, ``"open joint at C1"``, ``"C3 = 39 pF"`` or
+        ``"solder bridge across L2"``;
         ``exact``: no tolerance is drawn.
     draws
-        For tolerances; normal, cut at two sigma.
+        For tolerances; a normal one is cut at two sigma.
 
     Raises
     ------
     ValueError
         For an element or fault that makes no sense.
     """
+    known_keys(spec, "elements", "exact")
     elements = [_element(e, None if spec.get("exact") else draws) for e in spec["elements"]]
     faults = [str(f) for f in spec.get("faults", ())]
     for fault in faults:
@@ -104,12 +112,19 @@ def _element(spec: Mapping[str, Any], draws: Draws | None) -> Element:
     what = next((w for w in ("coil", "capacitor", "resistor") if w in spec), None)
     if what is None or spec.get("place") not in ("series", "shunt"):
         raise ValueError(f"element {spec!r} needs `place` and one of coil, capacitor, resistor")
-    name = str(spec["name"])
-    sigma = share(spec["tolerance"]) / 2.0 if "tolerance" in spec else 0.0
-    value = number(spec[what]) * (1.0 + (draws.normal(name, sigma) if draws else 0.0))
+    known_keys(spec, "name", "place", what, "q", "q at", "resonance", "tolerance", "spread", "drift", "lead")
+    name, spread = str(spec["name"]), spec.get("spread", "normal")
+    off, limit = 0.0, share(spec.get("tolerance", "0 %"))
+    if spread not in ("normal", "uniform"):
+        raise ValueError(f"a spread is normal or uniform, not {spread!r}")
+    if draws:
+        off = draws.normal(name, limit / 2) if spread == "normal" else draws.uniform(name, -limit, limit)
+    value = number(spec[what]) * (1.0 + off)
+    if not value > 0:
+        raise ValueError(f"element {name} of {value:g} cannot be")
     return Element(
         name, spec["place"], what, value, number(spec.get("q", np.inf)), number(spec.get("q at", 100e6)),
-        number(spec.get("resonance", 0.0)), number(spec.get("drift", 0.0)),
+        number(spec.get("resonance", 0.0)), number(spec.get("drift", 0.0)), number(spec.get("lead", 0.0)),
     )  # fmt: skip
 
 
@@ -117,15 +132,18 @@ def _with_fault(elements: list[Element], fault: str) -> list[Element]:
     shift = re.fullmatch(r"(\w+) ([+-][\d.]+) ?%", fault)
     wrong = re.fullmatch(r"(\w+) = (.+)", fault)
     joint = re.fullmatch(r"open joint at (\w+)", fault)
-    found = shift or wrong or joint
+    bridge = re.fullmatch(r"solder bridge across (\w+)", fault)
+    found = shift or wrong or joint or bridge
     names = [e.name for e in elements]
     if found is None or found[1] not in names:
-        raise ValueError(f"fault {fault!r} makes no sense; parts are {', '.join(names)}")
+        raise ValueError(f"fault {fault!r} makes no sense here; parts are {', '.join(names)}")
     i = names.index(found[1])
     if shift:
         changed = replace(elements[i], value=elements[i].value * (1 + float(shift[2]) / 100))
     elif wrong:
         changed = replace(elements[i], value=number(wrong[2]))
+    elif bridge:
+        changed = replace(elements[i], what="resistor", value=_BRIDGE_OHM, lead_h=_BRIDGE_H)
     else:
         changed = replace(elements[i], broken=True)
     return [*elements[:i], changed, *elements[i + 1 :]]

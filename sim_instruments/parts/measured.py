@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from sim_instruments.draws import Draws
-from sim_instruments.parts.base import Part, Surroundings
+from sim_instruments.parts.base import Part, Surroundings, known_keys
 from sim_instruments.waves import Matrix, Real
 
 __all__ = ["measured", "read_file"]
@@ -25,6 +25,7 @@ def read_file(path: Path) -> tuple[Real, Matrix]:
 
 def measured(spec: Mapping[str, Any], draws: Draws) -> Part:
     """A part from ``file``; outside its range the nearest point stands."""
+    known_keys(spec, "file")
     f_file, s_file = read_file(Path(spec["file"]))
 
     def response(f_hz: Real, around: Surroundings) -> Matrix:

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from sim_instruments.draws import Draws
-from sim_instruments.parts.base import Part, Surroundings
+from sim_instruments.parts.base import Part, Surroundings, known_keys, unknown_fault
 from sim_instruments.values import number
 from sim_instruments.waves import Matrix, Plane, Real, from_abcd, seen_through, thru
 
@@ -27,7 +27,14 @@ def standard(spec: Mapping[str, Any], draws: Draws) -> Part:
     draws
         What makes this specimen differ from the definition.
     """
+    known_keys(
+        spec, "standard", "delay", "loss", "impedance", "polynomial", "resistance", "inductance", "spread"
+    )
+    for fault in spec.get("faults", ()):
+        raise unknown_fault(fault, ())
     which, spread = spec["standard"], spec.get("spread", {})
+    if which not in ("short", "open", "load", "thru"):
+        raise ValueError(f"there is no standard {which!r}; known are short, open, load, thru")
 
     def drawn(name: str, nominal: float) -> float:
         return nominal + draws.normal(name, number(spread.get(name, 0.0)))
@@ -42,14 +49,14 @@ def standard(spec: Mapping[str, Any], draws: Draws) -> Part:
     polynomial = np.array([drawn("polynomial", first), *rest])
     resistance, inductance = (
         drawn("resistance", number(spec.get("resistance", 50.0))),
-        drawn("inductance", 0.0),
+        drawn("inductance", number(spec.get("inductance", 0.0))),
     )
 
     def end(f_hz: Real) -> Plane:
         w = 2 * np.pi * f_hz
         value = sum(k * f_hz**n for n, k in enumerate(polynomial))
         if which == "open":
-            z = 1 / (1j * w * np.maximum(value, 1e-18))
+            z = 1 / (1j * w * np.maximum(value, 1e-27))
         elif which == "short":
             z = 1j * w * value
         elif which == "load":
@@ -60,7 +67,7 @@ def standard(spec: Mapping[str, Any], draws: Draws) -> Part:
 
     def response(f_hz: Real, around: Surroundings) -> Matrix:
         gamma = end(f_hz)
-        if delay or loss:
+        if delay:
             gamma = seen_through(_offset(f_hz, delay, loss, z_line), gamma)
         return gamma[:, np.newaxis, np.newaxis]
 
