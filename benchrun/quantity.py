@@ -7,6 +7,7 @@ next reader cannot tell what was meant. Inside the program every value is a floa
 
 from __future__ import annotations
 
+import functools
 import math
 import re
 from enum import Enum
@@ -175,6 +176,7 @@ def parse_range(text: object, dimension: Dimension) -> tuple[float, float]:
     return low, high
 
 
+@functools.lru_cache(4096)
 def render(value: float, dimension: Dimension, digits: int = 4) -> str:
     """Write one value for people.
 

@@ -85,7 +85,7 @@ def draft_of(unit: _UnitRun, ending: Ending, started: datetime, wall_s: float) -
     """
     job, state, plan = unit.job, unit.state, unit.job.plan
     sequence = plan.sequence.model
-    entries, files = unit.kept.files()
+    entries, files = unit.kept.files(unit.emit.start_s)
     results = result_files(state)
     for path, contents in (*plan.inputs.values(), *results.values()):
         files[path] = contents
@@ -130,4 +130,10 @@ def draft_of(unit: _UnitRun, ending: Ending, started: datetime, wall_s: float) -
         plan=plan.digest,
         residual_seed=plan.procedure.noise_seed,
     )
-    return Draft(payload, files)
+    stored = unit.shared.stored
+    twins = {
+        path: stored[path][1]
+        for path, contents in files.items()
+        if path in stored and stored[path][0] == contents
+    }
+    return Draft(payload, files, twins)

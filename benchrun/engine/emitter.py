@@ -7,8 +7,14 @@ import json
 
 from benchrun.clock import Clock
 from benchrun.engine.events import Event, Sink
+from benchrun.evaluate.judgement import JudgedFigure
 
 __all__ = ["Emitter"]
+
+
+def _plain(figure: JudgedFigure) -> dict[str, object]:
+    """The only objects that events hold."""
+    return {f.name: getattr(figure, f.name) for f in dataclasses.fields(figure)}
 
 
 class Emitter:
@@ -27,12 +33,12 @@ class Emitter:
     def __init__(self, sink: Sink, clock: Clock) -> None:
         self._sink: Sink | None = sink
         self._clock = clock
-        self._start = clock.seconds()
+        self.start_s = clock.seconds()
         self.events: list[Event] = []
 
     def seconds(self) -> float:
         """Bench seconds since the run began."""
-        return round(self._clock.seconds() - self._start, 6)
+        return round(self._clock.seconds() - self.start_s, 6)
 
     def __call__(self, event: Event) -> None:
         """Tell."""
@@ -46,4 +52,6 @@ class Emitter:
 
     def as_json_lines(self) -> bytes:
         """The journal: one JSON object a line."""
-        return "".join(json.dumps(e.as_json(), ensure_ascii=False) + "\n" for e in self.events).encode()
+        return "".join(
+            json.dumps(e.as_json(), ensure_ascii=False, default=_plain) + "\n" for e in self.events
+        ).encode()

@@ -26,7 +26,7 @@ class Reading:
     contents
         As Touchstone; reading it back gives the same numbers to the last bit.
     taken_s
-        Bench seconds since the run began.
+        Bench clock, seconds.
     """
 
     step: str
@@ -42,10 +42,11 @@ class Reading:
         contents = write(f_hz, raw, f"raw: {hookup}")
         return cls(step, hookup, raw, contents, hashlib.sha256(contents).hexdigest(), taken_s)
 
-    def entry(self, number: int) -> ReadingEntry:
-        """As the payload lists it."""
-        file = f"raw/{self.step}/{number:02d}-{safe_name(self.hookup)}.s2p"
-        return ReadingEntry(step=self.step, hookup=self.hookup, file=file, taken_s=self.taken_s)
+    def entry(self, number: int, start_s: float) -> ReadingEntry:
+        """As the payload lists it: the time counts from the run's start, negative for what is older."""
+        file = f"raw/{number:02d}-{safe_name(f'{self.step} {self.hookup}')}.s2p"
+        taken_s = round(self.taken_s - start_s, 6)
+        return ReadingEntry(step=self.step, hookup=self.hookup, file=file, taken_s=taken_s)
 
 
 @dataclass(slots=True)
@@ -67,11 +68,11 @@ class Kept:
         """Raw readings of a step by hook-up."""
         return {r.hookup: r.raw for r in self.readings if r.step == step}
 
-    def files(self) -> tuple[list[ReadingEntry], dict[str, bytes]]:
+    def files(self, start_s: float) -> tuple[list[ReadingEntry], dict[str, bytes]]:
         """Entries for the payload, and contents by path."""
         entries, contents = [], {}
         for number, reading in enumerate(self.readings, 1):
-            entry = reading.entry(number)
+            entry = reading.entry(number, start_s)
             entries.append(entry)
             contents[entry.file] = reading.contents
         return entries, contents

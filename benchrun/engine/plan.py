@@ -190,21 +190,21 @@ def _inputs(sequence: Loaded[Sequence], bench: Loaded[Bench], named: Named) -> d
         "bench": ("inputs/bench.yaml", bench.document.raw),
     }
     for name, kit in named.kits.items():
-        found[f"kit:{name}"] = _free(found, "inputs/kits", name, ".yaml"), kit.document.raw
+        found[f"kit:{name}"] = _free(found, "inputs/kit", name, ".yaml"), kit.document.raw
     for name, mask in named.masks.items():
-        found[f"mask:{name}"] = _free(found, "inputs/masks", name, ".yaml"), mask.document.raw
+        found[f"mask:{name}"] = _free(found, "inputs/mask", name, ".yaml"), mask.document.raw
     for name, (raw, _) in named.fixtures.items():
-        found[f"fixture:{name}"] = _free(found, "inputs/fixtures", name, PurePath(name).suffix), raw
+        found[f"fixture:{name}"] = _free(found, "inputs/fixture", name, PurePath(name).suffix), raw
     return found
 
 
-def _free(found: Mapping[str, tuple[str, bytes]], folder: str, name: str, suffix: str) -> str:
+def _free(found: Mapping[str, tuple[str, bytes]], start: str, name: str, suffix: str) -> str:
     """A path of its own for a name that may itself be a path."""
     stem, taken = safe_name(PurePath(name).stem), {path.casefold() for path, _ in found.values()}
-    path, number = f"{folder}/{stem}{suffix}", 1
+    path, number = f"{start}-{stem}{suffix}", 1
     while path.casefold() in taken:
         number += 1
-        path = f"{folder}/{stem}-{number}{suffix}"
+        path = f"{start}-{stem}-{number}{suffix}"
     return path
 
 

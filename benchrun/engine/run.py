@@ -127,11 +127,13 @@ class Outcome:
 
 @dataclass(slots=True)
 class _Shared:
-    """What one calibration leaves for the units after the first."""
+    """What one calibration leaves for the units after the first: results, readings, their age and files."""
 
     state: State
     readings: dict[str, tuple[Reading, ...]] = field(default_factory=dict)
     taken_s: dict[str, float] = field(default_factory=dict)
+    stored: dict[str, tuple[bytes, Path]] = field(default_factory=dict)
+    signer: Signer | None = None
 
 
 def run(job: Job) -> tuple[Outcome, ...]:
@@ -279,7 +281,7 @@ class _UnitRun:
         else:
             for found in self.top.found:
                 self._tell(found)
-        self.signer = self.job.signer(self._origin)
+        self.signer = self.shared.signer = self.shared.signer or self.job.signer(self._origin)
         self.job.hands.offer(self.serial)
 
     def _tell(self, found: Found) -> None:
@@ -334,5 +336,7 @@ class _UnitRun:
             return error.folder, f"{error.message} The record stands in {error.folder}: move it to its place."
         except (RecordError, InputError) as error:
             return None, str(error)
+        if not self.shared.stored:
+            self.shared.stored.update({path: (raw, folder / path) for path, raw in draft.files.items()})
         self.emit(RecordWritten(folder=str(folder), key=signer.key_id))
         return folder, ""

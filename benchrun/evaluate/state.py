@@ -61,6 +61,8 @@ class State:
     thorough
         Have scikit-rf repeat every step, also those that it does slowly; an audit does so always, a run
         with the first unit after each calibration.
+    halves
+        Fixture halves on the grid of the step that takes them out, ``"step file"``; filled in once.
     """
 
     procedure: Procedure
@@ -70,6 +72,7 @@ class State:
     kinds: dict[str, str] = field(default_factory=dict)
     judged: dict[str, tuple[JudgedFigure, ...]] = field(default_factory=dict)
     agreements: dict[str, float] = field(default_factory=dict)
+    halves: dict[str, TwoPort] = field(default_factory=dict)
 
     @property
     def figures(self) -> tuple[JudgedFigure, ...]:
@@ -84,7 +87,7 @@ class State:
     def next_unit(self, calibrations: Mapping[str, Calibration] | None = None) -> State:
         """A fresh state under the same calibrations."""
         kept = self.calibrations if calibrations is None else calibrations
-        return State(self.procedure, thorough=False, calibrations=dict(kept))
+        return State(self.procedure, thorough=False, calibrations=dict(kept), halves=self.halves)
 
 
 def agree(state: State, step: str, ours: Data, theirs: Data) -> float:

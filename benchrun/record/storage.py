@@ -1,4 +1,4 @@
-"""The file system as a seam: the five operations of which a record is made."""
+"""The file system as a seam: the operations of which a record is made."""
 
 from __future__ import annotations
 
@@ -19,6 +19,10 @@ class Storage(Protocol):
 
     def write_file(self, path: Path, content: bytes) -> None:
         """Write a new file and bring it to the medium; FileExistsError if it is there."""
+        ...
+
+    def share_file(self, path: Path, content: bytes, twin: Path) -> bool:
+        """Give a file that is on the medium already a second name; False if that cannot be, or it differs."""
         ...
 
     def sync(self, folder: Path) -> None:
@@ -47,6 +51,18 @@ class Disk:
             file.write(content)
             file.flush()
             os.fsync(file.fileno())
+
+    def share_file(self, path: Path, content: bytes, twin: Path) -> bool:
+        """Give a file that is on the medium already a second name (a hard link)."""
+        try:
+            path.hardlink_to(twin)
+        except OSError:  # another file system, one without links, or the twin is gone
+            return False
+        # Believe the bytes, not the name: somebody may have changed the twin since it was written.
+        if path.read_bytes() == content:
+            return True
+        path.unlink()
+        return False
 
     def sync(self, folder: Path) -> None:
         """Bring a folder's list of names to the medium; Windows does this by itself."""

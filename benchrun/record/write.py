@@ -103,7 +103,7 @@ def write(draft: Draft, folder: Path, name: str, signer: Signer, storage: Storag
     stored = work
     try:
         storage.make_dir(folder)
-        _fill(work, contents, storage)
+        _fill(work, contents, draft.twins, storage)
         stored = _rename_to_free(work, folder, name, storage)
         storage.sync(folder)
     except OSError as error:
@@ -226,14 +226,15 @@ def _check_names(name: str, draft: Draft, files: dict[str, bytes]) -> None:
         raise RecordError(f"the record was not written: the payload names {missing[0]!r}, which is not there")
 
 
-def _fill(work: Path, contents: dict[str, bytes], storage: Storage) -> None:
+def _fill(work: Path, contents: dict[str, bytes], twins: dict[str, Path], storage: Storage) -> None:
     folders = {work}
     for path in contents:
         folders.update((work / path).parents[: path.count("/") + 1])
     for one in sorted(folders):
         storage.make_dir(one)
     for path, content in contents.items():
-        storage.write_file(work / path, content)
+        if path not in twins or not storage.share_file(work / path, content, twins[path]):
+            storage.write_file(work / path, content)
     for one in sorted(folders, reverse=True):
         storage.sync(one)
 

@@ -70,11 +70,12 @@ class TwelveTerms:
         f, r, det = self.forward, self.reverse, s.determinant
         d1 = 1.0 - f.source_match * s.s11 - f.load_match * s.s22 + f.source_match * f.load_match * det
         d2 = 1.0 - r.load_match * s.s11 - r.source_match * s.s22 + r.load_match * r.source_match * det
+        ahead, back = 1.0 / d1, 1.0 / d2
         return TwoPort(
-            f.directivity + f.tracking * (s.s11 - f.load_match * det) / d1,
-            r.isolation + r.transmission * s.s12 / d2,
-            f.isolation + f.transmission * s.s21 / d1,
-            r.directivity + r.tracking * (s.s22 - r.load_match * det) / d2,
+            f.directivity + f.tracking * ((s.s11 - f.load_match * det) * ahead),
+            r.isolation + r.transmission * (s.s12 * back),
+            f.isolation + f.transmission * (s.s21 * ahead),
+            r.directivity + r.tracking * ((s.s22 - r.load_match * det) * back),
         )
 
     def correct(self, m: TwoPort) -> TwoPort:

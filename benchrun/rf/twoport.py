@@ -130,13 +130,15 @@ class TwoPort:
         in ``left`` only, so a rest with no transmission at all is exact.
         """
         a, m = left, self
-        u = (m.s11 - a.s11) / (a.s12 * a.s21)
-        d = 1.0 + a.s22 * u
-        s11 = u / d
-        s21 = m.s21 / (a.s21 * d)
-        s12 = m.s12 / (a.s12 * d)
-        s22 = m.s22 - a.s22 * m.s12 * m.s21 / (a.s12 * a.s21 * d)
-        return TwoPort(s11, s12, s21, s22)
+        # The half is one plane, the reading may be many: what can be divided is divided in the half, and only
+        # one division is made in the reading's shape.
+        out, back = 1.0 / a.s21, 1.0 / a.s12
+        u = (m.s11 - a.s11) * (out * back)
+        inverse = 1.0 / (1.0 + a.s22 * u)
+        s21 = m.s21 * inverse * out
+        s12 = m.s12 * inverse * back
+        s22 = m.s22 - m.s12 * s21 * (a.s22 * back)
+        return TwoPort(u * inverse, s12, s21, s22)
 
     def without_right(self, right: TwoPort) -> TwoPort:
         """Take away ``right``, which stood behind port 2."""

@@ -87,7 +87,7 @@ def carry_out(step: StepModel, work: AtWork) -> None:
                 work.clock.wait(setup.settle)
             raw = work.analyzer.sweep().raw
             reading = work.kept.add(
-                Reading.of(step.name, hookup.text, settings.grid_hz, raw, work.emit.seconds())
+                Reading.of(step.name, hookup.text, settings.grid_hz, raw, work.clock.seconds())
             )
             work.emit(
                 ReadingTaken(

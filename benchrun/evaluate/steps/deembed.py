@@ -28,11 +28,19 @@ class DeEmbedArithmetic:
 
     def apply(self, step: DeEmbed, state: State, readings: Mapping[str, TwoPort]) -> None:
         """Leave a network."""
-        source, fixtures = state.networks[step.from_], state.procedure.fixtures
-        left = None if step.left is None else _on_grid(fixtures[step.left], source.f_hz)
-        right = None if step.right is None else _on_grid(fixtures[step.right], source.f_hz)
+        source = state.networks[step.from_]
+
+        def half(name: str | None) -> TwoPort | None:
+            if name is None:
+                return None
+            key = f"{step.name} {name}"
+            if key not in state.halves:
+                state.halves[key] = _on_grid(state.procedure.fixtures[name], source.f_hz)
+            return state.halves[key]
+
+        left, right = half(step.left), half(step.right)
         nominal = _without(source.nominal, left, right)
-        varied = None if source.varied is None else _without(source.varied, left, right)
+        varied = None if source.varied is None else _without_each(source.varied, left, right)
         if state.thorough:
             agree(state, step.name, nominal, _by_scikit_rf(source, left, right))
         state.networks[step.name] = Network(source.f_hz, nominal, varied, source.systematic, source.z0_ohm)
@@ -48,6 +56,24 @@ def _on_grid(fixture: TouchstoneData, f_hz: FloatArray) -> TwoPort:
     ):  # checked before the run, with the file's name
         raise InvalidMeasurement("A fixture file does not reach over the sweep.", "Use a file that does.")
     return two.map(lambda plane: resample(fixture.f_hz, plane, f_hz))
+
+
+_ROWS = 8
+"""Variations taken at once: their planes then stay in the processor's cache, which halves the time."""
+
+
+def _without_each(data: Data, left: TwoPort | None, right: TwoPort | None) -> Data:
+    """As :func:`_without`, for many variations ``(v, f)``."""
+    if not isinstance(data, TwoPort):
+        return _without(data, left, right)
+    planes = tuple(np.empty_like(plane) for plane in data.planes)
+    for first in range(0, len(data.s11), _ROWS):
+        rows = slice(first, first + _ROWS)
+        part = _without(data.map(lambda plane: plane[rows]), left, right)  # noqa: B023 - used at once
+        assert isinstance(part, TwoPort)  # a two-port without its fixture is one
+        for whole, piece in zip(planes, part.planes, strict=True):
+            whole[rows] = piece
+    return TwoPort(*planes)
 
 
 def _without(data: Data, left: TwoPort | None, right: TwoPort | None) -> Data:

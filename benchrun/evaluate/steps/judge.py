@@ -9,7 +9,7 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.judgement import JudgedFigure, not_told, told
-from benchrun.evaluate.network import Network, combine
+from benchrun.evaluate.network import Data, Network, combine
 from benchrun.evaluate.procedure import Procedure
 from benchrun.evaluate.state import State
 from benchrun.hookup import Hookup
@@ -58,7 +58,9 @@ def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[
         value = float(found.value)
         up = down = None
         if network.varied is not None:
-            moved = kind.measure(network.f_hz, network.varied, side, **limit.parameters).value
+            near = _near(network.f_hz, limit)
+            varied = _sliced(network.varied, near)
+            moved = kind.measure(network.f_hz[near], varied, side, **limit.parameters).value
             if kind.sense:
                 up, down = _decibel_bounds(
                     10.0 ** (kind.sense * (moved - value) / 20.0) - 1.0, network.systematic
@@ -67,6 +69,21 @@ def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[
             else:
                 up = down = COVERAGE_FACTOR * float(combine(moved - value, network.systematic))
         yield told(name, value, unit, bound, side, float(found.at_hz), rule, up, down)
+
+
+def _near(f_hz: FloatArray, limit: FigureLimit) -> slice:
+    """The samples that a limit needs: its bands, and some more at each end to interpolate the edges."""
+    band = limit.kind.band(limit.parameters) if limit.kind.local else None
+    if band is None:
+        return slice(None)
+    bands = (band, limit.against or band)
+    first = np.searchsorted(f_hz, min(low for low, _ in bands) * (1 - 1e-12))
+    last = np.searchsorted(f_hz, max(high for _, high in bands) * (1 + 1e-12))
+    return slice(max(int(first) - 2, 0), int(last) + 2)
+
+
+def _sliced(data: Data, near: slice) -> Data:
+    return data.map(lambda plane: plane[..., near]) if isinstance(data, TwoPort) else data[..., near]
 
 
 def _decibel_bounds(relative: FloatArray, systematic: int) -> tuple[float, float]:

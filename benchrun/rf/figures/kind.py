@@ -85,6 +85,8 @@ class FigureKind:
     sense
         +1 if the value is ``+20 log10`` of one magnitude, -1 if it is ``-20 log10`` of one, else 0. Such a
         value's uncertainty is found in the magnitude, where it is linear, and then turned into dB.
+    local
+        Whether samples outside of its band (and the ones next to it) have no say in it.
     between
         ``(f_hz, network, where_hz, **parameters) -> (..., k)`` in place of ``trace``, for a trace figure
         that can be taken between samples; a ``trace`` is interpolated there.
@@ -99,6 +101,7 @@ class FigureKind:
     scalar: Callable[..., Found] | None = None
     reach_hz: str = ""
     sense: int = 0
+    local: bool = True
     between: Trace | None = None
 
     def band(self, parameters: Mapping[str, Any]) -> tuple[float, float] | None:

@@ -85,5 +85,6 @@ KINDS = (
         "unwrapped phase of S21 from the lowest frequency of the sweep, in degrees",
         {"over": _OVER, "at": _AT, "trace": _TRACE},
         trace=_phase,
+        local=False,
     ),
 )
