@@ -184,7 +184,10 @@ def _instrument(
     model, serial = str(spec.get("model", "NA-2")), str(spec.get("serial", "0001"))
     if kind == "network analyzer":
         receivers = Receivers(spec["receivers"], draws / "instrument" / resource)
-        return Analyzer(world, WorldReadings(world, receivers), ("SIMULATED", model, serial, "1.0"))
+        return Analyzer(
+            world, WorldReadings(world, receivers), ("SIMULATED", model, serial, "1.0"),
+            spec.get("limits"), spec.get("manners"),
+        )  # fmt: skip
     if kind == "recorded readings":
         files = {str(what): folder / str(file) for what, file in spec["readings"].items()}
         return Analyzer(world, Recorded(world, files), ("RECORDED", model, serial, "1.0"))

@@ -1,49 +1,20 @@
-"""A raw TCP door: one instrument, one port, messages ended by LF."""
+"""A raw TCP door: one instrument, one port, messages ended by LF.
+
+Each connection has a line of its own: what one client left half said is gone with it. A stream knows neither
+END nor device clear, serial poll, trigger and locks, and answers follow one another as they are made.
+"""
 
 from __future__ import annotations
 
-import contextlib
 import socket
-import socketserver
-import threading
-from types import TracebackType
 
+from sim_instruments.doors.stream import StreamDoor, quick
 from sim_instruments.scpi.instrument import Instrument
 
 __all__ = ["SocketDoor"]
 
 
-class _Handler(socketserver.BaseRequestHandler):
-    server: _Server
-
-    def handle(self) -> None:
-        line: socket.socket = self.request
-        line.setsockopt(socket.IPPROTO_TCP, socket.TCP_NODELAY, 1)
-        quick = getattr(socket, "TCP_QUICKACK", None)
-        instrument = self.server.instrument
-        with contextlib.suppress(OSError):
-            while not instrument.line_closed:
-                if quick is not None:  # or a client without NODELAY waits 40 ms for every second message
-                    line.setsockopt(socket.IPPROTO_TCP, quick, 1)
-                data = line.recv(1 << 16)
-                if not data:
-                    return
-                instrument.receive(data)
-                answer, _ = instrument.take(1 << 30)
-                if answer:
-                    line.sendall(answer)
-
-
-class _Server(socketserver.ThreadingTCPServer):
-    allow_reuse_address = True
-    daemon_threads = True
-
-    def __init__(self, address: tuple[str, int], instrument: Instrument) -> None:
-        self.instrument = instrument
-        super().__init__(address, _Handler)
-
-
-class SocketDoor:
+class SocketDoor(StreamDoor):
     """Serves one instrument on a TCP port of the loopback interface.
 
     Parameters
@@ -63,25 +34,27 @@ class SocketDoor:
     """
 
     def __init__(self, instrument: Instrument, host: str = "127.0.0.1", port: int = 0) -> None:
-        self._server = _Server((host, port), instrument)
-        self._thread = threading.Thread(target=self._server.serve_forever, args=(0.01,), daemon=True)
-
-    @property
-    def port(self) -> int:
-        """The port in use."""
-        return int(self._server.server_address[1])
+        super().__init__(host, port)
+        self.instrument = instrument
 
     @property
     def resource(self) -> str:
         """VISA resource name."""
-        return f"TCPIP0::{self._server.server_address[0]!s}::{self.port}::SOCKET"
+        return f"TCPIP0::{self.host}::{self.port}::SOCKET"
 
-    def __enter__(self) -> SocketDoor:
-        self._thread.start()
-        return self
-
-    def __exit__(
-        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
-    ) -> None:
-        self._server.shutdown()
-        self._server.server_close()
+    def converse(self, connection: socket.socket) -> None:
+        """Serve one connection until it ends."""
+        answers: list[bytes] = []
+        line = self.instrument.line(answers.append)
+        while not self.instrument.line_closed:
+            quick(connection)
+            data = connection.recv(1 << 16)
+            if not data:
+                return
+            line.receive(data)
+            line.proceed()
+            if answers:
+                response = b"".join(answers)
+                answers.clear()
+                # Outside the world's lock: a client that does not read holds up nobody else.
+                connection.sendall(response)

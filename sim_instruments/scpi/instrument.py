@@ -1,22 +1,26 @@
-"""Base of every simulated instrument: message exchange, common commands, status subsystem."""
+"""Base of every simulated instrument: common commands, status subsystem, pending operations."""
 
 from __future__ import annotations
 
 from collections.abc import Callable
+from functools import partial
 
 from sim_instruments.scpi.errors import ScpiError
-from sim_instruments.scpi.message import Unit, number, units
+from sim_instruments.scpi.line import Line
+from sim_instruments.scpi.locks import Locks
+from sim_instruments.scpi.message import Unit
+from sim_instruments.scpi.parameters import whole
 from sim_instruments.scpi.status import Register, Status
 from sim_instruments.scpi.tree import Command, Tree
 from sim_instruments.world import World
 
 __all__ = ["Instrument"]
 
-_INPUT_BYTES = 4_000_000
-
 
 class Instrument:
     """An instrument that takes program messages and gives response messages.
+
+    Clients talk to it through a :class:`~sim_instruments.scpi.line.Line` each.
 
     Parameters
     ----------
@@ -31,187 +35,204 @@ class Instrument:
         self.identity = identity
         self.status = Status()
         self.tree = Tree()
+        self.locks = Locks()
         self.line_closed = False
-        self._input = bytearray()
-        self._output = bytearray()
+        self._tell_complete = False
+        self._answered = False
         self._common: dict[str, Command] = {
-            "*IDN": Command(get=lambda _: ",".join(self.identity)),
-            "*RST": Command(set=lambda _: self.reset()),
-            "*CLS": Command(set=lambda _: self.status.clear()),
-            "*OPC": Command(set=lambda _: self._note_complete(), get=lambda _: self._when_complete()),
-            "*WAI": Command(set=lambda _: self.finish()),
+            "*IDN": Command(get=lambda _: ",".join(self.identity), last=True),
+            "*RST": Command(set=lambda _: self._reset()),
+            "*CLS": Command(set=lambda _: self._clear_status()),
+            "*OPC": Command(set=lambda _: self._note_complete(), get=lambda _: "1", get_waits=True),
+            "*WAI": Command(set=lambda _: None, set_waits=True),
+            "*TRG": Command(set=lambda _: self.fire()),
             "*TST": Command(get=lambda _: "0"),
-            "*ESR": Command(get=lambda _: str(self.status.take_esr())),
+            "*ESR": Command(get=lambda _: self._esr()),
             "*ESE": self._byte("ese"),
             "*SRE": self._byte("sre"),
-            "*STB": Command(get=lambda _: str(self.status.byte(bool(self._output)))),
+            "*STB": Command(get=lambda _: self._stb()),
         }
         self._add_standard()
 
     # -- what an instrument kind overrides ---------------------------------------------------------------
 
     def reset(self) -> None:
-        """``*RST``."""
+        """``*RST``: settings and pending operations."""
 
-    def finish(self) -> None:
-        """Let the world go on until pending operations are complete."""
-
-    def refresh(self) -> None:
-        """Bring conditions up to the world's time; called before each unit."""
-
-    # -- the line ----------------------------------------------------------------------------------------
-
-    def receive(self, data: bytes) -> None:
-        """Take bytes of program messages; each LF ends one."""
-        with self.world.lock:
-            if len(self._input) + len(data) > _INPUT_BYTES:
-                self._input.clear()
-                self.status.report(ScpiError(-363))
-                return
-            self._input += data
-            while (end := self._input.find(b"\n")) >= 0:
-                message = bytes(self._input[:end]).rstrip(b"\r")
-                del self._input[: end + 1]
-                self._carry_out(message)
-
-    def take(self, count: int, until: int | None = None) -> tuple[bytes, bool]:
-        """Give up to ``count`` bytes of the response; the flag says that it ends there.
+    def ready_s(self, readings: bool) -> float | None:
+        """When pending operations are complete, in simulated time.
 
         Parameters
         ----------
-        until
-            Stop after this byte, if any.
+        readings
+            When there are readings, rather.
+
+        Returns
+        -------
+        float or None
+            None: they are; infinite: not before a trigger comes.
         """
+        return None
+
+    def refresh(self) -> None:
+        """Bring conditions up to the world's time; called before each unit."""
+        if self._tell_complete and self.ready_s(False) is None:
+            self._tell_complete = False
+            self.status.esr |= 1
+
+    def asked(self) -> None:
+        """Somebody polls: asking takes time too, so that a poll always comes to an end."""
+
+    def fire(self) -> None:
+        """``*TRG`` and group execute trigger."""
+        raise ScpiError(-211)
+
+    # -- the ways in -------------------------------------------------------------------------------------
+
+    def line(self, sink: Callable[[bytes], None] | None = None) -> Line:
+        """A line for one client; see :class:`~sim_instruments.scpi.line.Line`."""
+        return Line(self, sink)
+
+    def group_trigger(self) -> None:
+        """A trigger that comes over the interface instead of in a message."""
         with self.world.lock:
-            size = min(count, len(self._output))
-            if until is not None:
-                found = self._output.find(bytes([until]), 0, size)
-                size = found + 1 if found >= 0 else size
-            data = bytes(self._output[:size])
-            del self._output[:size]
-            return data, not self._output
+            self.refresh()
+            try:
+                self.fire()
+            except ScpiError as error:
+                self.status.report(error)
 
-    def unasked(self) -> None:
-        """Note that somebody reads with nothing to say."""
-        self.status.report(ScpiError(-420))
-
-    @property
-    def has_output(self) -> bool:
-        """Whether a response waits."""
-        return bool(self._output)
-
-    def clear(self) -> None:
-        """Device clear: input and output forgotten, settings kept."""
-        with self.world.lock:
-            self._input.clear()
-            self._output.clear()
-
-    def status_byte(self) -> int:
+    def status_byte(self, message_available: bool) -> int:
         """As a serial poll gives it."""
         with self.world.lock:
             self.refresh()
-            return self.status.byte(bool(self._output))
+            return self.status.byte(message_available)
+
+    def forget_complete(self) -> None:
+        """An ``*OPC`` that still waits is dropped (device clear, ``*CLS``, ``*RST``)."""
+        self._tell_complete = False
 
     # -- carrying out ------------------------------------------------------------------------------------
 
-    def _carry_out(self, message: bytes) -> None:
-        if self._output:  # IEEE 488.2, 6.3.2.3: a new message before the old answer was read
-            self._output.clear()
-            self.status.report(ScpiError(-410))
-        try:
-            text = message.decode("ascii")
-        except UnicodeDecodeError:
-            self.status.report(ScpiError(-101))
-            return
-        path: tuple[str, ...] = ()
-        answers: list[bytes] = []
-        for unit in units(text):
-            if isinstance(unit, ScpiError):
-                self.status.report(unit)
-                continue
-            self.refresh()
-            try:
-                command = self._find(unit, path)
-                if not unit.common:
-                    path = () if unit.absolute else path
-                    path = (*path, *unit.header)[:-1]
-                answer = self._execute(unit, command)
-            except ScpiError as error:
-                self.status.report(error)
-                continue
-            except Exception as error:  # a fault of the model must show, not vanish in the VISA layer
-                self.status.report(ScpiError(-300, f"{type(error).__name__} {error}"))
-                continue
-            if answer is not None:
-                answers.append(answer.encode("ascii", "replace") if isinstance(answer, str) else answer)
-        if answers:
-            self._output += b";".join(answers) + b"\n"
+    def find(self, unit: Unit, path: tuple[str, ...]) -> Command:
+        """The command that a unit means.
 
-    def _find(self, unit: Unit, path: tuple[str, ...]) -> Command:
+        Raises
+        ------
+        ScpiError
+            -113 or -114.
+        """
         if unit.common:
             name = unit.header[0].upper()
             if name not in self._common:
-                raise ScpiError(-113, name)
+                raise ScpiError(-113, name[:40])
             return self._common[name]
         return self.tree.find(unit.header, () if unit.absolute else path)
 
-    def _execute(self, unit: Unit, command: Command) -> str | bytes | None:
+    def execute(self, unit: Unit, command: Command, answered: bool) -> str | bytes | None:
+        """Carry out one unit.
+
+        Parameters
+        ----------
+        answered
+            An answer to an earlier unit waits already.
+
+        Raises
+        ------
+        ScpiError
+        """
+        header = ":".join(unit.header)[:60]
+        self._answered = answered
         if unit.query:
             if command.get is None:
-                raise ScpiError(-113, ":".join(unit.header) + "?")
+                raise ScpiError(-113, header + "?")
+            self._count(header, unit, command.asks_least, command.asks_most)
             return command.get(unit.parameters)
         if command.set is None:
-            raise ScpiError(-113, ":".join(unit.header))
-        if len(unit.parameters) < command.least:
-            raise ScpiError(-109, ":".join(unit.header))
-        if len(unit.parameters) > command.most:
-            raise ScpiError(-108, unit.parameters[command.most][:40])
+            raise ScpiError(-113, header)
+        self._count(header, unit, command.least, command.most)
         command.set(unit.parameters)
         return None
 
+    @staticmethod
+    def _count(header: str, unit: Unit, least: int, most: int) -> None:
+        if len(unit.parameters) < least:
+            raise ScpiError(-109, header)
+        if len(unit.parameters) > most:
+            # A list that fits this command but not this instrument is too much; a parameter too many is not.
+            raise ScpiError(-223 if most > 2 else -108, unit.parameters[most][:40])
+
     # -- standard commands -------------------------------------------------------------------------------
 
-    def _note_complete(self) -> None:
-        self.finish()
-        self.status.esr |= 1
+    def _reset(self) -> None:
+        self.reset()
+        self.forget_complete()
 
-    def _when_complete(self) -> str:
-        self.finish()
-        return "1"
+    def _clear_status(self) -> None:
+        self.status.clear()
+        self.forget_complete()
+
+    def _note_complete(self) -> None:
+        self._tell_complete = True
+        self.refresh()
+
+    def _esr(self) -> str:
+        self.asked()
+        self.refresh()
+        return str(self.status.take_esr())
+
+    def _stb(self) -> str:
+        self.asked()
+        self.refresh()
+        return str(self.status.byte(self._answered))
 
     def _byte(self, name: str) -> Command:
         def put(parameters: tuple[str, ...]) -> None:
-            setattr(self.status, name, int(number(parameters[0], 0, 255)))
+            value = whole(parameters[0], 0, 255)
+            setattr(self.status, name, value & ~64 if name == "sre" else value)  # bit 6 is not kept (11.3.2)
 
         return Command(put, lambda _: str(getattr(self.status, name)), 1, 1)
 
     def _add_standard(self) -> None:
-        status = self.status
-        self.tree.add("SYSTem:ERRor[:NEXT]", Command(get=lambda _: status.next_error()))
-        self.tree.add("SYSTem:ERRor:COUNt", Command(get=lambda _: str(len(status.errors))))
-        self.tree.add("SYSTem:ERRor:ALL", Command(get=lambda _: self._all_errors()))
-        self.tree.add("SYSTem:VERSion", Command(get=lambda _: "1999.0"))
-        self.tree.add("STATus:PRESet", Command(set=lambda _: self._preset_status()))
+        status, add = self.status, self.tree.add
+        for node, text in (("", True), (":CODE", False)):
+            add(f"SYSTem:ERRor{node}[:NEXT]", Command(get=partial(self._next_error, text)))
+            add(f"SYSTem:ERRor{node}:ALL", Command(get=partial(self._all_errors, text)))
+        add("SYSTem:ERRor:COUNt", Command(get=lambda _: str(len(status.errors))))
+        add("SYSTem:VERSion", Command(get=lambda _: "1999.0"))
+        add("STATus:PRESet", Command(set=lambda _: self._preset_status()))
         for name, register in (("OPERation", status.operation), ("QUEStionable", status.questionable)):
             self._add_register(name, register)
 
     def _add_register(self, name: str, register: Register) -> None:
         def field(attribute: str) -> Command:
             def put(parameters: tuple[str, ...]) -> None:
-                setattr(register, attribute, int(number(parameters[0], 0, 65535)) & 0x7FFF)
+                setattr(register, attribute, whole(parameters[0], 0, 65535) & 0x7FFF)
 
             return Command(put, lambda _: str(getattr(register, attribute)), 1, 1)
 
-        take: Callable[[tuple[str, ...]], str] = lambda _: str(register.take_event())  # noqa: E731
-        self.tree.add(f"STATus:{name}[:EVENt]", Command(get=take))
-        self.tree.add(f"STATus:{name}:CONDition", Command(get=lambda _: str(register.condition)))
+        def event(_: tuple[str, ...]) -> str:
+            self.asked()
+            self.refresh()
+            return str(register.take_event())
+
+        def condition(_: tuple[str, ...]) -> str:
+            self.asked()
+            self.refresh()
+            return str(register.condition)
+
+        self.tree.add(f"STATus:{name}[:EVENt]", Command(get=event))
+        self.tree.add(f"STATus:{name}:CONDition", Command(get=condition))
         self.tree.add(f"STATus:{name}:ENABle", field("enable"))
         self.tree.add(f"STATus:{name}:PTRansition", field("ptransition"))
         self.tree.add(f"STATus:{name}:NTRansition", field("ntransition"))
 
-    def _all_errors(self) -> str:
-        found = [self.status.next_error() for _ in range(max(len(self.status.errors), 1))]
-        return ",".join(found)
+    def _next_error(self, text: bool, _: tuple[str, ...]) -> str:
+        entry = self.status.next_error()
+        return entry if text else entry.partition(",")[0]
+
+    def _all_errors(self, text: bool, _: tuple[str, ...]) -> str:
+        return ",".join(self._next_error(text, ()) for _ in range(max(len(self.status.errors), 1)))
 
     def _preset_status(self) -> None:
         self.status.operation.preset()

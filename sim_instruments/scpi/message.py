@@ -1,21 +1,30 @@
-"""Program messages to units: headers and typed parameters (SCPI-1999 Vol. 1, 6 to 8, from memory)."""
+"""Program messages to units: where a message ends, its units, their headers and data elements.
+
+IEEE 488.2 chapter 7 and SCPI-1999 Vol. 1, 6 to 8 (from memory). Each malformed kind has its own error number;
+which one follows the descriptions in SCPI-1999 Vol. 2, 21.8.
+"""
 
 from __future__ import annotations
 
-import math
 import re
 from dataclasses import dataclass
 
+from sim_instruments.scpi.element import block_end, check_element
 from sim_instruments.scpi.errors import ScpiError
 
-__all__ = ["FREQUENCY", "POWER", "TIME", "Unit", "boolean", "choice", "number", "numbers", "string", "units"]
+__all__ = ["Unit", "message_end", "units"]
 
-FREQUENCY = {"HZ": 1.0, "KHZ": 1e3, "MHZ": 1e6, "MAHZ": 1e6, "GHZ": 1e9}
-TIME = {"S": 1.0, "MS": 1e-3, "US": 1e-6, "NS": 1e-9}
-POWER = {"DBM": 1.0}
-
-_HEADER = re.compile(r"\*[A-Za-z]+\??|:?[A-Za-z]\w*(?::[A-Za-z]\w*)*\??")
-_NUMBER = re.compile(r"([+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:\s*[eE]\s*[+-]?\d+)?)\s*([A-Za-z%/]+)?")
+_MNEMONIC = 12
+"""Longest mnemonic, numeric suffix not counted."""
+_HEADER = re.compile(r"(?:\*[A-Za-z]\w*|:?[A-Za-z]\w*(?::[A-Za-z]\w*)*)\??", re.ASCII)
+_STRING = re.compile(r"\"(?:[^\"]|\"\")*\"|'(?:[^']|'')*'")
+_STOPS = {";": re.compile(r"[;\"'#(]"), ",": re.compile(r"[,\"'#(]")}
+_PARENTHESIS = re.compile(r"[()\"']")
+_FRAME = re.compile(rb"[\n\"'#]")
+_QUOTED = re.compile(rb"\"[^\"\n]*\"|'[^'\n]*'")
+_CONTROLS = {**dict.fromkeys([*range(10), *range(11, 32)], " "), 0x85: "\xff", 0xA0: "\xff"}
+"""Controls are white space (7.4.1.2); what Python takes for white space beyond ASCII is not."""
+_BLOCK_LENGTH = re.compile(rb"#([1-9])(\d*)")
 
 
 @dataclass(frozen=True)
@@ -31,7 +40,7 @@ class Unit:
     query
         Ended in a question mark.
     parameters
-        Texts, quotes kept.
+        Data elements as written: quotes kept, blocks with their header, byte for character.
     """
 
     header: tuple[str, ...]
@@ -45,15 +54,71 @@ class Unit:
         return self.header[0].startswith("*")
 
 
+def message_end(data: bytearray, whole: bool) -> int | None:
+    r"""Where the LF stands that ends the first message; LF within a definite block does not.
+
+    Parameters
+    ----------
+    data
+        What came in so far.
+    whole
+        END came with the last byte; a block of unstated length then reaches to it.
+
+    Returns
+    -------
+    int or None
+        Position of the LF, or ``len(data)`` where END alone ends the message; None while it has not ended.
+
+    Examples
+    --------
+    >>> message_end(bytearray(b'A "#12";B\nC'), False)
+    9
+    >>> message_end(bytearray(b"A #12\n\n;B\n"), False)
+    9
+    """
+    position, open_end = 0, len(data) if whole and data else None
+    while match := _FRAME.search(data, position):
+        found, position = match[0], match.end()
+        if found == b"\n":
+            return match.start()
+        if found != b"#":
+            quoted = _QUOTED.match(data, match.start())
+            position = quoted.end() if quoted else position
+        elif match.start() and data[match.start() - 1] in b" ,\t":
+            if whole and data[position : position + 1] == b"0":
+                return len(data)
+            length = _BLOCK_LENGTH.match(data, match.start())
+            if length is None:
+                continue
+            digits = int(length[1])
+            if len(length[2]) >= digits:
+                position = length.start(2) + digits + int(length[2][:digits])
+            elif length.end() == len(data):  # the length itself is still coming
+                return open_end
+    return open_end
+
+
 def units(message: str) -> list[Unit | ScpiError]:
-    """Units in order; one that cannot be read stands as its error, and those after it are still read."""
+    """Units in order; one that cannot be read stands as its error, and those after it are still read.
+
+    Parameters
+    ----------
+    message
+        Without its terminator, bytes as characters (latin-1).
+
+    Examples
+    --------
+    >>> [unit.header for unit in units("SENS:FREQ:STAR 1 GHZ;*OPC?")]
+    [('SENS', 'FREQ', 'STAR'), ('*OPC',)]
+    """
     found: list[Unit | ScpiError] = []
+    if "#" not in message and not message.isprintable():
+        message = message.translate(_CONTROLS)
     for text in _split(message, ";"):
-        stripped = text.strip()
-        if not stripped:
+        if not text or text.isspace():
             continue
         try:
-            found.append(_unit(stripped))
+            found.append(_unit(text.lstrip()))
         except ScpiError as error:
             found.append(error)
     return found
@@ -62,117 +127,57 @@ def units(message: str) -> list[Unit | ScpiError]:
 def _unit(text: str) -> Unit:
     match = _HEADER.match(text)
     if match is None:
-        raise ScpiError(-101 if not text[0].isalnum() else -102, text[:40])
+        known = text[0].isascii() and (text[0].isalnum() or text[0] in ":*?\"'(+-.,")
+        raise ScpiError(-102 if known else -101, text[:40])
     head, rest = match[0], text[match.end() :]
     if rest and not rest[0].isspace():
-        raise ScpiError(-101 if not rest[0].isascii() or not rest[0].isprintable() else -102, text[:40])
-    parameters = tuple(p.strip() for p in _split(rest.strip(), ",")) if rest.strip() else ()
-    if any(not p for p in parameters):
-        raise ScpiError(-103 if len(parameters) > 1 else -109, text[:40])
-    query = head.endswith("?")
+        raise ScpiError(_after_header(rest[0]), text[:40])
     words = head.rstrip("?").lstrip(":").split(":")
-    return Unit(tuple(words), head.startswith(":"), query, parameters)
+    if any(len(word.lstrip("*").rstrip("0123456789")) > _MNEMONIC for word in words):
+        raise ScpiError(-112, text[:40])
+    parameters: tuple[str, ...] = ()
+    if rest and not rest.isspace():
+        parameters = tuple(map(check_element, _split(rest, ",")))
+    return Unit(tuple(words), head.startswith(":"), head.endswith("?"), parameters)
+
+
+def _after_header(c: str) -> int:
+    if c in "\"'(#,+-.":
+        return -111  # data where white space should be
+    return -102 if c in ":?*" else -101
 
 
 def _split(text: str, separator: str) -> list[str]:
-    """At separators outside quotes and parentheses."""
-    if separator not in text:
-        return [text]
-    parts, start, quote, depth = [], 0, "", 0
-    for i, c in enumerate(text):
-        if quote:
-            quote = "" if c == quote else quote
+    """At separators outside strings, blocks and parentheses."""
+    parts, start, position = [], 0, 0
+    stop = _STOPS[separator]
+    while match := stop.search(text, position):
+        at, position = match.start(), match.end()
+        c = match[0]
+        if c == separator:
+            parts.append(text[start:at])
+            start = position
         elif c in "\"'":
-            quote = c
+            string = _STRING.match(text, at)
+            position = string.end() if string else len(text)
         elif c == "(":
-            depth += 1
-        elif c == ")":
-            depth -= 1
-        elif c == separator and depth == 0:
-            parts.append(text[start:i])
-            start = i + 1
+            position = _closing(text, at)
+        elif at and text[at - 1] in " \t,":
+            position = block_end(text, at) or position
     parts.append(text[start:])
     return parts
 
 
-def number(
-    text: str, low: float, high: float, suffixes: dict[str, float] | None = None, default: float | None = None
-) -> float:
-    """A numeric parameter within its range; MINimum, MAXimum and DEFault count.
-
-    Raises
-    ------
-    ScpiError
-        -104, -121, -128, -131, -138 or -222.
-    """
-    word = text.upper()
-    if word in ("MIN", "MINIMUM"):
-        return low
-    if word in ("MAX", "MAXIMUM"):
-        return high
-    if word in ("DEF", "DEFAULT") and default is not None:
-        return default
-    match = _NUMBER.fullmatch(text)
-    if match is None:
-        if text[:1] in "\"'(#":
-            raise ScpiError(-104, text[:40])
-        raise ScpiError(-121 if text[:1].isdigit() else -141, text[:40])
-    value = float(match[1].replace(" ", ""))
-    if match[2]:
-        if not suffixes:
-            raise ScpiError(-138, text[:40])
-        if match[2].upper() not in suffixes:
-            raise ScpiError(-131, text[:40])
-        value *= suffixes[match[2].upper()]
-    if not math.isfinite(value) or not low <= value <= high:
-        raise ScpiError(-222, text[:40])
-    return value
-
-
-def numbers(
-    texts: tuple[str, ...], low: float, high: float, suffixes: dict[str, float] | None = None
-) -> list[float]:
-    """A list of numeric parameters."""
-    return [number(text, low, high, suffixes) for text in texts]
-
-
-def boolean(text: str) -> bool:
-    """ON, OFF, or a number that rounds to zero or not."""
-    word = text.upper()
-    if word in ("ON", "OFF"):
-        return word == "ON"
-    return round(number(text, -32768, 32767)) != 0
-
-
-def choice(text: str, *keywords: str) -> str:
-    """One of several keywords in short or long form; gives the long form as written here.
-
-    Raises
-    ------
-    ScpiError
-        -224.
-    """
-    for keyword in keywords:
-        if text.upper() in (keyword.upper(), short(keyword)):
-            return keyword
-    raise ScpiError(-224, text[:40])
-
-
-def string(text: str) -> str:
-    """A quoted string.
-
-    Raises
-    ------
-    ScpiError
-        -104 or -151.
-    """
-    if text[:1] not in ("'", '"'):
-        raise ScpiError(-104, text[:40])
-    if len(text) < 2 or text[-1] != text[0]:
-        raise ScpiError(-151, text[:40])
-    return text[1:-1].replace(text[0] * 2, text[0])
-
-
-def short(keyword: str) -> str:
-    """The capitals of a keyword, which are its short form."""
-    return "".join(c for c in keyword if c.isupper() or not c.isalpha())
+def _closing(text: str, start: int) -> int:
+    """Behind the parenthesis that closes the one at ``start``; right behind that one if none does."""
+    depth, position = 0, start
+    while match := _PARENTHESIS.search(text, position):
+        position = match.end()
+        if match[0] in "\"'":
+            string = _STRING.match(text, match.start())
+            position = string.end() if string else position
+            continue
+        depth += 1 if match[0] == "(" else -1
+        if depth == 0:
+            return position
+    return start + 1

@@ -8,8 +8,6 @@ from sim_instruments.scpi.errors import ScpiError, event_bit
 
 __all__ = ["Register", "Status"]
 
-_QUEUE = 20
-
 
 class Register:
     """Condition, transition filters, event, enable."""
@@ -45,20 +43,28 @@ class Register:
 
 
 class Status:
-    """Everything an instrument reports of itself."""
+    """Everything an instrument reports of itself.
 
-    def __init__(self) -> None:
+    Parameters
+    ----------
+    queue
+        How many entries the error queue holds; SCPI asks for two at least (Vol. 2, 21.8, from memory).
+    """
+
+    def __init__(self, queue: int = 20) -> None:
+        self.queue = queue
         self.errors: deque[str] = deque()
         self.operation, self.questionable = Register(), Register()
         self.esr, self.ese, self.sre = 128, 0, 0  # power on
 
     def report(self, error: ScpiError) -> None:
-        """Queue an error; a full queue keeps its oldest and ends in -350."""
+        """Queue an error; a full queue keeps its oldest and ends in -350, which is an event of its own."""
         self.esr |= event_bit(error.number)
-        if len(self.errors) < _QUEUE:
+        if len(self.errors) < self.queue:
             self.errors.append(error.entry)
         else:
             self.errors[-1] = ScpiError(-350).entry
+            self.esr |= event_bit(-350)
 
     def next_error(self) -> str:
         """Oldest first."""

@@ -8,12 +8,15 @@ from dataclasses import dataclass, field
 from typing import TypeAlias
 
 from sim_instruments.scpi.errors import ScpiError
-from sim_instruments.scpi.message import short
+from sim_instruments.scpi.parameters import short
 
 __all__ = ["Command", "Tree"]
 
 Setter: TypeAlias = Callable[[tuple[str, ...]], None]
 Getter: TypeAlias = Callable[[tuple[str, ...]], "str | bytes"]
+
+_WRITTEN = re.compile(r"([A-Za-z_]+?)(\d*)", re.ASCII)
+_DECLARED = re.compile(r"(\[?):?([A-Za-z_]+)(?:<(\d+)>)?\]?")
 
 
 @dataclass(frozen=True)
@@ -28,12 +31,26 @@ class Command:
         Takes the parameters and answers; None if there is no query.
     least, most
         How many parameters the setting takes.
+    asks_least, asks_most
+        How many the query takes.
+    set_waits, get_waits
+        Only carried out when no operation is pending.
+    measures
+        The query wants readings, and waits for them.
+    last
+        Its answer is of arbitrary form, so that no other query may follow it in a message.
     """
 
     set: Setter | None = None
     get: Getter | None = None
     least: int = 0
     most: int = 0
+    asks_least: int = 0
+    asks_most: int = 0
+    set_waits: bool = False
+    get_waits: bool = False
+    measures: bool = False
+    last: bool = False
 
 
 @dataclass
@@ -45,11 +62,11 @@ class _Node:
     children: list[_Node] = field(default_factory=list)
 
     def fits(self, written: str) -> bool:
-        match = re.fullmatch(r"([A-Za-z_]+)(\d*)", written)
+        match = _WRITTEN.fullmatch(written)
         if match is None or match[1].upper() not in (self.long.upper(), short(self.long)):
             return False
-        if match[2] and not 1 <= int(match[2]) <= self.suffixes:
-            raise ScpiError(-114, written)
+        if match[2] and (len(match[2]) > 9 or not 1 <= int(match[2]) <= self.suffixes):
+            raise ScpiError(-114, written[:40])
         return True
 
 
@@ -67,17 +84,21 @@ class Tree:
     def __init__(self) -> None:
         self._root = _Node()
         self._known: dict[tuple[str, ...], Command] = {}
+        self.headers: list[str] = []
 
     def add(self, header: str, command: Command) -> None:
-        """Add one command."""
+        """Add one command, or put another in its place."""
         node = self._root
-        for bracket, word, suffix in re.findall(r"(\[?):?([A-Za-z_*]+)(?:<(\d+)>)?\]?", header):
+        for bracket, word, suffix in _DECLARED.findall(header):
             found = next((c for c in node.children if c.long == word), None)
             if found is None:
                 found = _Node(word, int(suffix or 1), bool(bracket))
                 node.children.append(found)
             node = found
         node.command = command
+        if header not in self.headers:
+            self.headers.append(header)
+        self._known.clear()
 
     def find(self, header: tuple[str, ...], path: tuple[str, ...]) -> Command:
         """The command of a header, seen from the current path.
@@ -92,6 +113,8 @@ class Tree:
             command = self._walk(self._root, whole)
             if command is None:
                 raise ScpiError(-113, ":".join(whole)[:60])
+            if len(self._known) > 1000:  # every spelling counts, and a client may invent them
+                self._known.clear()
             self._known[whole] = command
         return self._known[whole]
 
