@@ -81,6 +81,7 @@ class Benchtop:
         self.found = (found,)
         tell(found)
         _check_identity(spec, identity)
+        self.analyzer.replayed = identity.origin == "recorded"
         self.analyzer.preset()
         return self.analyzer
 

@@ -74,7 +74,9 @@ class NetworkAnalyzer:
         self.session = session
         self.dialect = dialect
         self._settings: SweepSettings | None = None
-        self._last: tuple[TwoPort, SweepSettings] | None = None
+        self._last: TwoPort | None = None
+        self.replayed = False
+        """Recordings are served again: the same reading twice is what they are, not a fault."""
 
     def preset(self) -> None:
         """Known state: source as the instrument's reset leaves it, no error pending.
@@ -144,7 +146,7 @@ class NetworkAnalyzer:
         self.session.raise_errors(self.dialect.read.values)
         self._judge_health()
         self._judge_readings(raw, settings)
-        self._last = raw, settings
+        self._last = raw
         return Readings(grid, raw)
 
     def _trigger(self, settings: SweepSettings) -> None:
@@ -239,14 +241,14 @@ class NetworkAnalyzer:
                     f"{self.session.name} gave no number for {name} at {where} ({int(bad.sum())} points).",
                     "Read again; if it stays, the receiver is faulty.",
                 )
-        if self._last is not None and self._last[1] is settings:
-            before = self._last[0]
-            if all(np.array_equal(a, b) for a, b in zip(raw.planes, before.planes, strict=True)):
-                raise InvalidMeasurement(
-                    f"{self.session.name} gave the very same readings as before, digit for digit: "
-                    "they are stale.",
-                    "Trigger a new sweep; if it stays, reset the analyzer.",
-                )
+        before = self._last
+        if before is None or self.replayed:
+            return
+        if all(np.array_equal(a, b) for a, b in zip(raw.planes, before.planes, strict=True)):
+            raise InvalidMeasurement(
+                f"{self.session.name} gave the very same readings as before, digit for digit: they are stale.",
+                "Trigger a new sweep; if it stays, reset the analyzer.",
+            )
 
     def make_safe(self) -> str:
         """Source off, as far as the line allows.

@@ -74,7 +74,7 @@ def main(units: int) -> int:
                 hands=hands,
                 clock=rehearsal.clock,
                 records=folder / "records",
-                signer=lambda origin: store.rehearsal(),
+                signer=lambda _: store.rehearsal(),
                 sink=watch,
                 library=library,
                 seed=1,
@@ -82,7 +82,8 @@ def main(units: int) -> int:
         )
     each = [(end - begin) * 1e3 for begin, end in zip(marks[2::2], marks[3::2], strict=True)]
     middle = statistics.median(each)
-    print(f"{len(each)} further units, 1601 points: median {middle:.1f} ms, least {min(each):.1f}, most {max(each):.1f}")
+    print(f"{len(each)} further units, 1601 points: median {middle:.1f} ms", end="")
+    print(f", least {min(each):.1f}, most {max(each):.1f}")
     print(f"target: at most {TARGET_MS:g} ms")
     return int(middle > TARGET_MS)
 

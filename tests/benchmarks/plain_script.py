@@ -74,7 +74,8 @@ unit = halves[0].inv ** corrected ** halves[1].inv
 vna.query("OUTP OFF;*OPC?")
 vna.close()
 
-db = {n: 20 * np.log10(np.abs(unit.s[:, i, j])) for n, (i, j) in {"11": (0, 0), "21": (1, 0), "22": (1, 1)}.items()}
+places = {"11": (0, 0), "21": (1, 0), "22": (1, 1)}
+db = {n: 20 * np.log10(np.abs(unit.s[:, i, j])) for n, (i, j) in places.items()}
 
 
 def band(values, low, high):
@@ -101,6 +102,8 @@ out = pathlib.Path(folder)
 out.mkdir(parents=True, exist_ok=True)
 corrected.write_touchstone(str(out / "corrected"))
 unit.write_touchstone(str(out / "unit"))
-report = {n: {"value": float(v), "limit": x, "side": s, "pass": verdict[n]} for n, (v, s, x) in limits.items()}
+report = {
+    n: {"value": float(v), "limit": x, "side": s, "pass": verdict[n]} for n, (v, s, x) in limits.items()
+}
 (out / "result.json").write_text(json.dumps(report))
 print(json.dumps({"pass": all(verdict.values())}))

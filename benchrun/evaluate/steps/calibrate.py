@@ -18,8 +18,11 @@ from benchrun.sequence.steps import Calibrate
 __all__ = ["NOISE_DRAWS", "CalibrateArithmetic"]
 
 NOISE_DRAWS = 20
-"""Draws of noise, each of four complex readings: their share of an uncertainty, small beside the systematic one
-after any sensible choice of bandwidth, is then known to about one part in six (1 / sqrt(2 n))."""
+"""Draws of noise, each of four complex readings.
+
+Their share of an uncertainty, small beside the systematic one after any sensible choice of bandwidth, is then
+known to one part in six (1 / sqrt(2 n)).
+"""
 
 
 class CalibrateArithmetic:
