@@ -85,9 +85,9 @@ def _check_number(element: str) -> str:
         return element
     suffix = _SUFFIX.match(rest)
     if suffix is None:
-        if rest[0].isspace():
-            raise ScpiError(-103, element[:40])
-        raise ScpiError(-131 if rest[0] in "%/" else -121, ascii(element[:40]))
+        if rest.lstrip()[0] in "%/":
+            raise ScpiError(-131, element[:40])
+        raise ScpiError(-103 if rest[0].isspace() else -121, ascii(element[:40]))
     if len(suffix[1]) > _LONGEST:
         raise ScpiError(-134, element[:40])
     tail = rest[suffix.end() :]
