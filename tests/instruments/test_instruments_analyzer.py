@@ -274,10 +274,27 @@ def test_the_same_digits_twice_are_stale(pair):
     analyzer.sweep()
 
 
-def test_new_settings_may_read_the_same(pair):
+def test_the_same_digits_under_new_settings_are_stale_too(pair):
     analyzer, _ = pair
     analyzer.sweep()
     analyzer.set_up(SweepSettings(SPAN.grid_hz, "linear", 1000.0, -10.0))
+    with pytest.raises(InvalidMeasurement, match="the very same readings as before"):
+        analyzer.sweep()
+
+
+def test_another_grid_is_another_reading(pair):
+    analyzer, wire = pair
+    analyzer.sweep()
+    wire.points, wire.grid = 2, SPAN.grid_hz[:2]
+    wire.planes = {name: plane[:2] for name, plane in wire.planes.items()}
+    analyzer.set_up(SweepSettings(SPAN.grid_hz[:2], "linear", 1000.0, -10.0))
+    analyzer.sweep()
+
+
+def test_recordings_may_be_served_twice(pair):
+    analyzer, _ = pair
+    analyzer.replayed = True
+    analyzer.sweep()
     analyzer.sweep()
 
 
