@@ -11,6 +11,7 @@ import itertools
 import socket
 import struct
 import threading
+from collections.abc import Iterator
 from dataclasses import dataclass, field
 
 from sim_instruments.doors.frames import FATAL, MINOR, Frame, Kind, receive_frame, send_frame
@@ -25,6 +26,9 @@ _VENDOR = 0x5349  # "SI"
 _PAYLOAD = 1 << 20
 """Largest payload taken here in one message."""
 _LOCK_SLICE_S = 0.05
+_CATCH_UP_S = 0.25
+"""How long a status query waits for messages sent before it on the other connection."""
+_FIRST_MESSAGE = 0xFFFF_FF00
 
 
 @dataclass
@@ -39,6 +43,20 @@ class _Client:
     unread: bool = False
     clearing: bool = False
     gone: threading.Event = field(default_factory=threading.Event)
+    last: int = _FIRST_MESSAGE - 2
+    moved: threading.Condition = field(default_factory=threading.Condition)
+
+    def carried_out(self, message: int) -> None:
+        """Note the last message number that was carried out."""
+        with self.moved:
+            self.last = message
+            self.moved.notify_all()
+
+    def wait_carried_out(self, message: int) -> None:
+        """Wait for a message sent before on the other connection; clients give its number or the next."""
+        near = (message, (message - 2) & 0xFFFF_FFFF)
+        with self.moved:
+            self.moved.wait_for(lambda: self.last in near, _CATCH_UP_S)
 
 
 class _Fault(Exception):
@@ -47,6 +65,18 @@ class _Fault(Exception):
     def __init__(self, code: int, what: str) -> None:
         super().__init__(code, what)
         self.code, self.what = code, what
+
+
+@contextlib.contextmanager
+def _faults_told(connection: socket.socket) -> Iterator[None]:
+    """Tell the client by name what ends its connection."""
+    try:
+        yield
+    except (_Fault, ValueError) as error:
+        fault = error if isinstance(error, _Fault) else _Fault(1, str(error))
+        text = f"{FATAL[fault.code]}: {fault.what}".encode()
+        with contextlib.suppress(OSError):
+            send_frame(connection, Kind.FATAL_ERROR, fault.code, 0, text)
 
 
 class HislipDoor(StreamDoor):
@@ -79,21 +109,14 @@ class HislipDoor(StreamDoor):
 
     def converse(self, connection: socket.socket) -> None:
         """Serve one connection, whichever of the two it is."""
-        try:
-            try:
-                opening = receive_frame(connection, _PAYLOAD)
-                if opening.kind == Kind.INITIALIZE:
-                    self._first(connection, opening)
-                elif opening.kind == Kind.ASYNC_INITIALIZE:
-                    self._second(connection, opening)
-                else:
-                    raise _Fault(3, f"a client begins with Initialize, not with message type {opening.kind}")
-            except ValueError as error:
-                raise _Fault(1, str(error)) from None
-        except _Fault as fault:
-            text = f"{FATAL[fault.code]}: {fault.what}".encode()
-            with contextlib.suppress(OSError):
-                send_frame(connection, Kind.FATAL_ERROR, fault.code, 0, text)
+        with _faults_told(connection):
+            opening = receive_frame(connection, _PAYLOAD)
+            if opening.kind == Kind.INITIALIZE:
+                self._first(connection, opening)
+            elif opening.kind == Kind.ASYNC_INITIALIZE:
+                self._second(connection, opening)
+            else:
+                raise _Fault(3, f"a client begins with Initialize, not with message type {opening.kind}")
 
     # -- the first connection: messages -------------------------------------------------------------------
 
@@ -105,9 +128,10 @@ class HislipDoor(StreamDoor):
         self._clients[client.number] = client
         send_frame(connection, Kind.INITIALIZE_RESPONSE, 0, _VERSION << 16 | client.number)  # 0: no overlap
         try:
-            while not self.instrument.line_closed:
-                quick(connection)
-                self._message(client, receive_frame(connection, _PAYLOAD))
+            with _faults_told(connection):
+                while not self.instrument.line_closed:
+                    quick(connection)
+                    self._message(client, receive_frame(connection, _PAYLOAD))
         finally:
             del self._clients[client.number]
             client.gone.set()
@@ -133,6 +157,7 @@ class HislipDoor(StreamDoor):
         elif frame.kind == Kind.DEVICE_CLEAR_COMPLETE:
             client.line.clear()
             client.clearing = client.unread = False
+            client.carried_out(_FIRST_MESSAGE - 2)
             send_frame(client.first, Kind.DEVICE_CLEAR_ACKNOWLEDGE, 0, 0)
         elif frame.kind == Kind.ERROR:
             return  # the client tells of a mistake; there is nothing to mend
@@ -159,6 +184,7 @@ class HislipDoor(StreamDoor):
             line.proceed()
             response, _ = line.take(1 << 62) if line.has_output else (b"", True)
             client.unread = bool(response)
+        client.carried_out(frame.parameter)
         if response:
             self._respond(client, response, frame.parameter)
 
@@ -179,8 +205,9 @@ class HislipDoor(StreamDoor):
         client.second = connection
         send_frame(connection, Kind.ASYNC_INITIALIZE_RESPONSE, 0, _VENDOR)
         try:
-            while not client.gone.is_set():
-                self._out_of_turn(client, connection, receive_frame(connection, _PAYLOAD))
+            with _faults_told(connection):
+                while not client.gone.is_set():
+                    self._out_of_turn(client, connection, receive_frame(connection, _PAYLOAD))
         finally:
             with contextlib.suppress(OSError):
                 client.first.shutdown(socket.SHUT_RDWR)
@@ -194,10 +221,12 @@ class HislipDoor(StreamDoor):
             size = struct.pack("!Q", _PAYLOAD)
             send_frame(connection, Kind.ASYNC_MAXIMUM_MESSAGE_SIZE_RESPONSE, 0, 0, size)
         elif frame.kind == Kind.ASYNC_STATUS_QUERY:
+            client.wait_carried_out(frame.parameter)
             if frame.control & 1:
                 client.unread = False
-            self.instrument.asked()
-            byte = self.instrument.status_byte(client.unread)
+            with self.instrument.world.lock:
+                self.instrument.asked()
+                byte = self.instrument.status_byte(client.unread)
             send_frame(connection, Kind.ASYNC_STATUS_RESPONSE, byte, 0)
         elif frame.kind == Kind.ASYNC_DEVICE_CLEAR:
             client.clearing = True

@@ -1,4 +1,4 @@
-"""Overlapped sweeps, triggers, what waits for them (IEEE 488.2 chapter 12; SCPI-1999 Vol. 2, 24, from memory)."""
+"""Overlapped sweeps, triggers and who waits (IEEE 488.2 chapter 12; SCPI-1999 Vol. 2, 24, from memory)."""
 
 from __future__ import annotations
 
