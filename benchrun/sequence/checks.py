@@ -121,7 +121,7 @@ def _figure_band(
                 (*path, key),
                 "Widen the sweep or narrow the band.",
             )
-    if limit.kind.dimension is Dimension.FREQUENCY:
+    if limit.kind.dimension is Dimension.FREQUENCY and not limit.kind.width:
         for side, value in limit.bounds.items():
             if outside(value, value, grid):
                 yield document.problem(

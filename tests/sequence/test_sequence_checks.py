@@ -10,7 +10,9 @@ import pytest
 
 from benchrun.errors import InputError
 from benchrun.sequence.checks import check_bench, check_kits, check_masks, check_sequence, check_serial
-from benchrun.sequence.files import KINDS, read
+from benchrun.sequence.files import KINDS, load_model, read
+from benchrun.sequence.find import find
+from benchrun.sequence.models import Sequence
 
 TODAY = datetime.date(2026, 12, 1)
 KIT = """\
@@ -213,3 +215,11 @@ def test_checks_never_raise_on_names_that_half_resolve(good, load_text, step, na
     check_kits(sequence, {"n50": kit}, TODAY)
     check_masks(sequence, {"stop": mask})
     check_bench(sequence, load_text(BENCH, "bench").model)
+
+
+def test_limits_of_a_bandwidth_lie_nowhere_in_the_sweep() -> None:
+
+    path = find("sequence", "preselector")
+    loaded = load_model(path.read_bytes(), str(path), Sequence, path)
+    assert any(step.kind == "judge" for step in loaded.model.steps)
+    assert check_sequence(loaded) == []

@@ -85,6 +85,7 @@ KINDS = (
         "upper less lower corner frequency at `drop` below the peak of |S21|",
         {"drop": _DROP, "trace": _TRACE},
         scalar=_bandwidth,
+        width=True,
     ),
     FigureKind(
         "centre frequency",

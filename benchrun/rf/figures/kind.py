@@ -87,6 +87,8 @@ class FigureKind:
         value's uncertainty is found in the magnitude, where it is linear, and then turned into dB.
     local
         Whether samples outside of its band (and the ones next to it) have no say in it.
+    width
+        Whether a figure of frequency is a distance between two, so that its limits lie nowhere in a sweep.
     between
         ``(f_hz, network, where_hz, **parameters) -> (..., k)`` in place of ``trace``, for a trace figure
         that can be taken between samples; a ``trace`` is interpolated there.
@@ -102,6 +104,7 @@ class FigureKind:
     reach_hz: str = ""
     sense: int = 0
     local: bool = True
+    width: bool = False
     between: Trace | None = None
 
     def band(self, parameters: Mapping[str, Any]) -> tuple[float, float] | None:
