@@ -86,7 +86,7 @@ def serve(
             out.write(f"{one.identity} ({one.name})\n  {one.hislip}\n  {one.socket}\n")
         out.write(f"units: {', '.join(bench.serials) or 'none'}\n")
         out.write(
-            "Sweeps and hands take time on the bench's clock only. Interrupt to end.\n"
+            "sweeps and hands take time on the bench's clock only; interrupt to end.\n"
             if forever
             else HELP + "\n"
         )
