@@ -6,14 +6,16 @@ import contextlib
 import importlib
 import os
 import sys
-from typing import Any
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Any, TextIO
 
 import click
 
 import benchrun
 from benchrun.errors import BenchError, Stopped
 
-__all__ = ["main", "program"]
+__all__ = ["Patient", "main", "program"]
 
 _COMMANDS = {
     "audit": ("benchrun.cli.audit", "Check records: signature, files, and the result from its raw readings."),
@@ -75,10 +77,53 @@ def program() -> None:
 
 def main(arguments: list[str] | None = None) -> None:
     """Run the program and leave with its exit code; nothing a user can do wrong ends in a traceback."""
-    for stream in (sys.stdout, sys.stderr):
+    for name in ("stdin", "stdout", "stderr"):
+        stream = getattr(sys, name)
         if hasattr(stream, "reconfigure"):  # a console that cannot show a sign shows a question mark
             stream.reconfigure(errors="replace")
+        if name != "stdin":
+            nowhere = Path(os.devnull).open("w") if stream is None else stream  # noqa: SIM115 - to the end
+            setattr(sys, name, Patient(nowhere))
     sys.exit(_main(arguments))
+
+
+class Patient:
+    """A stream whose reader may go away: what is written then is lost, and nothing else happens.
+
+    Whoever shuts the pipe of a running program (``| head``) must neither end a run nor turn its exit code.
+
+    Parameters
+    ----------
+    stream
+        The stream itself; everything but writing and flushing is its own.
+    """
+
+    def __init__(self, stream: TextIO) -> None:
+        self._stream = stream
+
+    def __getattr__(self, name: str) -> Any:
+        return getattr(self._stream, name)
+
+    def write(self, text: str) -> int:
+        """Write, if anybody still reads."""
+        with self._shut():
+            self._stream.write(text)
+        return len(text)
+
+    def flush(self) -> None:
+        """Flush, if anybody still reads."""
+        with self._shut():
+            self._stream.flush()
+
+    @contextlib.contextmanager
+    def _shut(self) -> Iterator[None]:
+        try:
+            yield
+        except BrokenPipeError:
+            # From now on into nowhere, also when the interpreter flushes at its end.
+            nowhere = os.open(os.devnull, os.O_WRONLY)
+            os.dup2(nowhere, self._stream.fileno())
+            os.close(nowhere)
 
 
 def _main(arguments: list[str] | None) -> int:
@@ -101,11 +146,6 @@ def _main(arguments: list[str] | None) -> int:
     except KeyboardInterrupt:
         click.echo("benchrun: stopped", err=True)
         return 4
-    except BrokenPipeError:
-        # Whoever read our output has gone; leave quietly, and do not let the interpreter flush again.
-        with contextlib.suppress(OSError, ValueError):
-            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        return 0
     except OSError as error:
         where = f" {error.filename}" if error.filename else ""
         click.echo(f"benchrun: the system said {error.strerror or error}{where}", err=True)

@@ -24,7 +24,7 @@ def ask(request: str) -> str:
         If the input has ended.
     """
     click.echo(f"  {request}, then Enter (or: stop) ", nl=False, err=True)
-    line = sys.stdin.readline()
+    line = sys.stdin.readline() if sys.stdin is not None else ""
     if not line:
         raise EOFError
     return line

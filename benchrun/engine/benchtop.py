@@ -13,6 +13,7 @@ from benchrun.instruments.analyzer import NetworkAnalyzer
 from benchrun.instruments.dialect import Dialect
 from benchrun.scpi.identity import Identity
 from benchrun.scpi.opening import open_manager, open_session
+from benchrun.scpi.session import Session
 from benchrun.scpi.transcript import Transcript
 from benchrun.sequence.bench import Bench, Instrument
 
@@ -51,6 +52,9 @@ class Benchtop:
         self.transcript = Transcript()
         self.found: tuple[Found, ...] = ()
         self.analyzer: NetworkAnalyzer | None = None
+        self.ready = False
+        """Whether the whole bench was opened and brought into a known state."""
+        self._session: Session | None = None
 
     @property
     def origin(self) -> str:
@@ -58,13 +62,17 @@ class Benchtop:
         origins = {found.identity.origin for found in self.found}
         return next((o for o in ("simulated", "recorded") if o in origins), "measured")
 
-    def open(self, tell: Callable[[Found], None] = lambda _: None) -> NetworkAnalyzer:
+    def open(
+        self, tell: Callable[[Found], None] = lambda _: None, agreed: Callable[[], None] = lambda: None
+    ) -> NetworkAnalyzer:
         """Open, ask who is there, and bring everything into a known state.
 
         Parameters
         ----------
         tell
             Called for each instrument found.
+        agreed
+            Called when all are the right ones, before anything is set; what it raises ends the opening.
 
         Raises
         ------
@@ -74,15 +82,18 @@ class Benchtop:
         """
         spec = self.bench.analyzer
         manager = open_manager(self.library if self.library is not None else spec.library)
-        session = open_session(manager, spec.resource, self.clock, self.transcript)
-        self.analyzer = NetworkAnalyzer(session, self.dialect)
+        self._session = session = open_session(manager, spec.resource, self.clock, self.transcript)
         identity = session.identity()
         found = Found("analyzer", spec.resource, identity)
         self.found = (found,)
         tell(found)
         _check_identity(spec, identity)
+        agreed()
+        # From here on it is ours; to another instrument nothing is ever sent, not even "source off".
+        self.analyzer = NetworkAnalyzer(session, self.dialect)
         self.analyzer.replayed = identity.origin == "recorded"
         self.analyzer.preset()
+        self.ready = True
         return self.analyzer
 
     def make_safe(self) -> tuple[str, ...]:
@@ -94,8 +105,8 @@ class Benchtop:
 
     def close(self) -> None:
         """Close the lines."""
-        if self.analyzer is not None:
-            self.analyzer.session.close()
+        if self._session is not None:
+            self._session.close()
 
     def __enter__(self) -> Benchtop:
         return self

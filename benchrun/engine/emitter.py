@@ -20,7 +20,7 @@ def _plain(figure: JudgedFigure) -> dict[str, object]:
 class Emitter:
     """Sends events, with their time, to a sink and keeps them.
 
-    A screen that cannot be written to (a closed pipe, say) loses its events, never the run.
+    A screen that fails (a closed pipe, a full disk, a fault of its own) loses its events, never the run.
 
     Parameters
     ----------
@@ -47,7 +47,7 @@ class Emitter:
         if self._sink is not None:
             try:
                 self._sink(event)
-            except OSError:
+            except (Exception, SystemExit):  # rich leaves the program when its pipe is shut
                 self._sink = None
 
     def as_json_lines(self) -> bytes:

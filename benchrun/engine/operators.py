@@ -6,7 +6,7 @@ from collections.abc import Callable
 from typing import Protocol
 
 from benchrun.errors import InputError, Stopped
-from benchrun.hookup import Hookup
+from benchrun.hookup import Connection, Hookup
 
 __all__ = ["Nobody", "Operator", "Person"]
 
@@ -51,9 +51,11 @@ class Person:
     Parameters
     ----------
     ask
-        Shows a request and waits for a line; an answer that means "stop" ends the run.
+        Shows a request and waits for a line. An empty one goes on, "stop" ends the run, and anything else
+        may mean "not yet": then the request is made again.
     """
 
+    _GO = frozenset({"", "y", "yes", "ok", "done"})
     _STOP = frozenset({"stop", "s", "quit", "q"})
 
     def __init__(self, ask: Callable[[str], str]) -> None:
@@ -68,19 +70,26 @@ class Person:
 
     def connect(self, hookup: Hookup) -> None:
         """Ask, and wait for Enter."""
-        text = hookup.text
-        if any("unit" in c.items for c in hookup.connections):
-            text = text.replace("unit", f"unit {self._serial}")
-        try:
-            answer = self._ask(f"Connect {text}")
-        except EOFError:
-            raise Stopped("nobody answered: the input ended") from None
-        if answer.strip().lower() in self._STOP:
-            raise Stopped
+        text = Hookup(tuple(self._labelled(c) for c in hookup.connections)).text
+        while True:
+            try:
+                answer = self._ask(f"Connect {text}").strip().lower()
+            except EOFError:
+                raise Stopped("nobody answered: the input ended") from None
+            if answer in self._STOP:
+                raise Stopped
+            if answer in self._GO:
+                return
+
+    def _labelled(self, connection: Connection) -> Connection:
+        items = tuple(f"unit {self._serial}" if item == "unit" else item for item in connection.items)
+        return Connection(items, connection.ports)
 
 
 class Nobody:
     """No hands at all: a run that needs one connection, which stands already."""
+
+    _serial: str | None = None
 
     def check(self, hookups: tuple[Hookup, ...]) -> None:
         """Refuse a run that needs anything connected in between."""
@@ -92,7 +101,13 @@ class Nobody:
             )
 
     def offer(self, serial: str) -> None:
-        """It is in place already."""
+        """It is in place already, and no other can take its place."""
+        if self._serial not in (None, serial):
+            raise InputError(
+                f"unit {self._serial} is to be in place, and nobody is there to change it for {serial}; "
+                "run it without --unattended, or one unit at a time"
+            )
+        self._serial = serial
 
     def connect(self, hookup: Hookup) -> None:
         """It stands already."""

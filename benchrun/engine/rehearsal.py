@@ -48,7 +48,10 @@ class SimulatedHands:
 
     def connect(self, hookup: Hookup) -> None:
         """Connect; costs simulated seconds."""
-        self._world.connect([(c.items, c.ports) for c in hookup.connections])
+        try:
+            self._world.connect([(c.items, c.ports) for c in hookup.connections])
+        except NoSuchItem as error:
+            raise InputError(f"the simulated hands cannot connect {hookup.text}: {error}") from None
 
 
 @dataclass(frozen=True, slots=True)

@@ -37,6 +37,7 @@ from benchrun.evaluate.judgement import JudgedFigure
 from benchrun.evaluate.state import State
 from benchrun.record.payload import safe_name
 from benchrun.record.signer import Signer
+from benchrun.record.storage import DISK, Storage
 from benchrun.record.write import RecordRescued, refusal, write_or_rescue
 from benchrun.sequence.checks import check_serial
 from benchrun.sequence.models import CAUTIONS
@@ -73,6 +74,8 @@ class Job:
         A VISA library instead of the bench file's; the rehearsal's.
     seed
         Of the simulated bench.
+    storage
+        Where records are written.
     """
 
     plan: Plan
@@ -85,6 +88,7 @@ class Job:
     sink: Sink
     library: Any = None
     seed: int | None = None
+    storage: Storage = DISK
 
 
 @dataclass(frozen=True, slots=True)
@@ -161,6 +165,7 @@ def run(job: Job) -> tuple[Outcome, ...]:
     """
     for serial in job.units:
         check_serial(serial, job.plan.sequence.model)
+        job.hands.offer(serial)
     job.hands.check(job.plan.hookups)
     _prepare(job.records)
     outcomes: list[Outcome] = []
@@ -169,7 +174,7 @@ def run(job: Job) -> tuple[Outcome, ...]:
     with StopSignals() as stop, top:
         for serial in job.units:
             outcomes.append(_UnitRun(job, serial, top, shared, stop).go())
-            if stop.asked or top.analyzer is None or outcomes[-1].conclusion is Conclusion.STOPPED:
+            if stop.asked or not top.ready or outcomes[-1].conclusion is Conclusion.STOPPED:
                 break
     return tuple(outcomes)
 
@@ -190,8 +195,8 @@ class _UnitRun:
     def __init__(self, job: Job, serial: str, top: Benchtop, shared: _Shared, stop: StopSignals) -> None:
         self.job, self.serial, self.top, self.shared, self.stop = job, serial, top, shared, stop
         self.emit = Emitter(job.sink, job.clock)
-        first = not shared.state.calibrations
-        self.state = shared.state if first else shared.state.next_unit()
+        self.state = shared.state.next_unit()
+        self.state.thorough = not shared.state.calibrations
         self.kept = Kept()
         self.signer: Signer | None = None
         self.fault = ""
@@ -202,7 +207,8 @@ class _UnitRun:
         started, began = self.job.clock.utc(), time.perf_counter()
         ending = self._measure()
         left_on = self.top.make_safe()
-        self.emit(MadeSafe(left_on=left_on))
+        if self.top.analyzer is not None:
+            self.emit(MadeSafe(left_on=left_on))
         figures = self.state.figures
         self.emit(
             RunEnded(
@@ -244,10 +250,10 @@ class _UnitRun:
             return Ending(Conclusion.STOPPED, stopped.reason)
         except InvalidMeasurement as error:
             return Ending(Conclusion.INVALID, error.reason, error.advice)
-        except InputError:
+        except InputError as error:
             if self.signer is None and self.top.found:
                 raise  # nothing was measured yet
-            return Ending(Conclusion.INVALID, traceback.format_exc(limit=0))
+            return Ending(Conclusion.INVALID, str(error), "Correct it, then run again.")
         except BenchError as error:
             return Ending(Conclusion.INVALID, str(error), "See to it, then run again.")
         except Exception as error:  # a fault of the program: the readings taken so far are kept all the same
@@ -276,16 +282,19 @@ class _UnitRun:
         )
         for text in (*sequence.caution_texts, *(CAUTIONS.get(c, c) for c in plan.bench.model.cautions)):
             self.emit(Cautioned(text=text))
-        if self.top.analyzer is None:
-            self.top.open(self._tell)
+        if not self.top.ready:
+            self.top.open(self._tell, self._take_key)
         else:
             for found in self.top.found:
                 self._tell(found)
-        self.signer = self.shared.signer = self.shared.signer or self.job.signer(self._origin)
+            self._take_key()
         self.job.hands.offer(self.serial)
 
     def _tell(self, found: Found) -> None:
         self.emit(InstrumentFound(role=found.role, resource=found.resource, identity=found.identity.text))
+
+    def _take_key(self) -> None:
+        self.signer = self.shared.signer = self.shared.signer or self.job.signer(self._origin)
 
     def _steps(self) -> None:
         analyzer = self.top.analyzer
@@ -302,6 +311,8 @@ class _UnitRun:
             if isinstance(step, Calibrate) and self._still_good(step):
                 self.kept.extend(self.shared.readings[step.name])
             else:
+                if isinstance(step, Calibrate):
+                    self.state.thorough = True
                 execution.carry_out(step, work)
                 if isinstance(step, Calibrate):
                     self._share(step)
@@ -313,7 +324,6 @@ class _UnitRun:
             return False
         age = self.job.clock.seconds() - self.shared.taken_s[step.name]
         if step.keep is not None and age > step.keep:
-            self.state.thorough = True
             return False
         self.state.agreements[step.name] = self.shared.state.agreements[step.name]
         self.emit(Noted(text=f"{step.name} serves on, {age / 60:.0f} min old"))
@@ -327,11 +337,12 @@ class _UnitRun:
 
     def _keep(self, ending: Ending, started: datetime, wall_s: float) -> tuple[Path | None, str]:
         """Write the record; what went wrong with it is said, never raised."""
-        name = f"{started:%Y%m%dT%H%M%SZ}-{safe_name(self.job.plan.sequence.model.sequence)}-{self.serial}"
+        sequence = safe_name(self.job.plan.sequence.model.sequence)[:36]  # a name has at most 120 characters
+        name = f"{started:%Y%m%dT%H%M%SZ}-{sequence}-{self.serial}"
         try:
             signer = self.signer or self.job.signer(self._origin)
             draft = draft_of(self, ending, started, wall_s)
-            folder = write_or_rescue(draft, self.job.records, name, signer)
+            folder = write_or_rescue(draft, self.job.records, name, signer, self.job.storage)
         except RecordRescued as error:
             return error.folder, f"{error.message} The record stands in {error.folder}: move it to its place."
         except (RecordError, InputError) as error:

@@ -13,9 +13,12 @@ from benchrun.errors import Stopped
 
 __all__ = ["StopSignals"]
 
+_NAMES = ("SIGINT", "SIGTERM", "SIGHUP", "SIGBREAK")  # the last two each on one kind of system only
+_ENDING: tuple[int, ...] = tuple(getattr(signal, name) for name in _NAMES if hasattr(signal, name))
+
 
 class StopSignals:
-    """While entered, Ctrl-C and SIGTERM ask for a stop.
+    """While entered, Ctrl-C, SIGTERM and the end of the terminal ask for a stop.
 
     Only within :meth:`armed` does the first of them raise :class:`Stopped`, in the main thread. Outside of
     it (switching off, writing the record) a stop waits: it changes nothing there, and must not leave a
@@ -24,10 +27,11 @@ class StopSignals:
     Parameters
     ----------
     signals
-        Which; left alone where the run is not in the main thread.
+        Which; left alone where the run is not in the main thread, and those that whoever started the
+        program wants ignored (``nohup``).
     """
 
-    def __init__(self, signals: tuple[int, ...] = (signal.SIGINT, signal.SIGTERM)) -> None:
+    def __init__(self, signals: tuple[int, ...] = _ENDING) -> None:
         self._signals = signals if threading.current_thread() is threading.main_thread() else ()
         self._before: dict[int, Any] = {}
         self._armed = False
@@ -35,7 +39,8 @@ class StopSignals:
 
     def __enter__(self) -> StopSignals:
         for number in self._signals:
-            self._before[number] = signal.signal(number, self._arrived)
+            if signal.getsignal(number) is not signal.SIG_IGN:
+                self._before[number] = signal.signal(number, self._arrived)
         return self
 
     def __exit__(

@@ -101,7 +101,8 @@ def agree(state: State, step: str, ours: Data, theirs: Data) -> float:
     difference = float(
         max(np.max(np.abs(a - b)) for a, b in zip(_planes(ours), _planes(theirs), strict=True))
     )
-    state.agreements[step] = max(difference, state.agreements.get(step, 0.0))
+    if np.isfinite(difference):  # no number can stand in a record
+        state.agreements[step] = max(difference, state.agreements.get(step, 0.0))
     if not difference <= AGREEMENT:
         raise InvalidMeasurement(
             f"The result of {step} differs from scikit-rf's by {difference:.2e}; "

@@ -36,4 +36,6 @@ def _one(outcome: Outcome) -> dict[str, object]:
     for key in ("reason", "advice", "trouble"):
         if text := getattr(outcome, key):
             found[key] = text
+    if outcome.left_on:
+        found["left_on"] = list(outcome.left_on)
     return found
