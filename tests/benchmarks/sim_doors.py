@@ -1,6 +1,6 @@
 """How fast a simulated bench is: making it, one sweep, reading all four readings through each door.
 
-The yardstick is a plain numpy evaluation of the same chain: fixture, ladder, fixture, couplers, cables, noise,
+The yardstick is a plain numpy evaluation of the same chain: fixture, ladder, fixture, couplers, cables, noise
 and the bytes of the answer. HiSLIP and the socket are served by threads of this process.
 
 Usage: python tests/benchmarks/sim_doors.py [ROUNDS]
