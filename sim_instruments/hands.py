@@ -55,21 +55,29 @@ class Slip:
     Parameters
     ----------
     change
-        ``(links asked, draws) -> links made``; the same links: this slip does not fit what was asked.
+        ``links asked -> links made``; the same links: this slip does not fit what was asked.
     loose
         The joints are left loose.
     late_s
         The connection stands only so much later than it was said to.
+    then
+        What else happens when the connection is made.
+    only
+        It fits only connections with this item.
     """
 
-    change: Callable[[tuple[Link, ...], Draws], tuple[Link, ...]] | None = None
+    change: Callable[[tuple[Link, ...]], tuple[Link, ...]] | None = None
     loose: bool = False
     late_s: float = 0.0
+    then: Callable[[], None] | None = None
+    only: str = ""
 
-    def fits(self, asked: tuple[Link, ...], draws: Draws) -> bool:
+    def fits(self, asked: tuple[Link, ...]) -> bool:
         """Whether it can happen to this connection."""
+        if self.only and not any(self.only in link.items for link in asked):
+            return False
         if self.change is not None:
-            return self.change(asked, draws) != asked
+            return self.change(asked) != asked
         return bool(asked)
 
 
@@ -79,24 +87,19 @@ class Hands:
 
     Parameters
     ----------
-    draws
-        Chance.
-    slip
-        What goes wrong when ``when`` says so.
-    when
-        Told at each connection that the slip fits; whether it happens.
+    slips
+        What can go wrong, each with what says whether it does, asked at each connection that it fits; the
+        first that happens is the one.
     """
 
-    draws: Draws
-    slip: Slip | None = None
-    when: Callable[[], bool] = field(default=lambda: False)
+    slips: list[tuple[Slip, Callable[[], bool]]] = field(default_factory=list)
 
     def make(self, asked: tuple[Link, ...]) -> tuple[tuple[Link, ...], Slip | None]:
         """What is connected in the end, and the slip that made it so."""
-        if self.slip is None or not self.slip.fits(asked, self.draws) or not self.when():
-            return asked, None
-        change = self.slip.change
-        return (change(asked, self.draws) if change else asked), self.slip
+        for slip, when in self.slips:
+            if slip.fits(asked) and when():
+                return (slip.change(asked) if slip.change else asked), slip
+        return asked, None
 
     def loosened(self, joint: Joint, draws: Draws) -> Joint:
         """A joint that was left hand-tight or less: a gap, and a contact that wanders."""

@@ -9,7 +9,7 @@ from __future__ import annotations
 import itertools
 import threading
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -78,14 +78,14 @@ class World:
     def __post_init__(self) -> None:
         self.lock = threading.RLock()
         self.draws = Draws(self.seed)
-        self.hands = Hands(self.draws / "hands")
+        self.hands = Hands()
         self.links: tuple[Link, ...] = ()
         self.serial = ""
         self.bend = 0.0
         self.matings: dict[str, int] = {}
         self._heating = self.draws.uniform("heating", 0.0, 2.0 * np.pi)
         self._unit: Part | None = None
-        self._count = 0
+        self._count = self._readings = 0
         self._joints: dict[Link, list[Joint]] = {}
         self._later: tuple[float, tuple[Link, ...], bool] | None = None
         self._steps: list[tuple[float, float]] = []
@@ -158,6 +158,8 @@ class World:
                 self._later = self.time_s + slip.late_s, made, False
             else:
                 self._make(made, slip is not None and slip.loose)
+            if slip is not None and slip.then is not None:
+                slip.then()
 
     def _check(self, asked: tuple[Link, ...]) -> None:
         taken: set[int] = set()
@@ -256,9 +258,17 @@ class World:
             around = self.surroundings()
             rows: list[tuple[tuple[int, ...], list[Part], list[Matrix]]] = []
             for link in self.links:
-                made = [joint_matrix(f_hz, j) for j in self._joints.get(link, ())]
+                made = [joint_matrix(f_hz, self._now(j)) for j in self._joints.get(link, ())]
                 rows.append((link.ports, [self.part(item) for item in link.items], made))
             return between(f_hz, rows, around, power_dbm, driven)
+
+    def _now(self, joint: Joint) -> Joint:
+        """A loose contact is another one at every reading."""
+        if not joint.contact_ohm:
+            return joint
+        self._readings += 1
+        wander = (self.draws / "contact" / self._readings).uniform("wander", 0.3, 1.7)
+        return replace(joint, contact_ohm=joint.contact_ohm * wander)
 
     def truth(self, f_hz: Real) -> Matrix:
         """True S-parameters of the unit itself, ``(f, n, n)``: for tests and studies, not for a sequence."""

@@ -1,0 +1,156 @@
+"""Everything that can go wrong on a bench, by name; this table is the only place that knows it all.
+
+Faults of parts stand in words in bench files (``faults: ["L2 +15 %"]``), see :mod:`sim_instruments.parts`.
+"""
+
+from __future__ import annotations
+
+import inspect
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
+from typing import cast
+
+from sim_instruments.bench import SimulatedBench
+from sim_instruments.faults import answers, conditions, slips
+from sim_instruments.faults.line import FaultyInstrument, FaultyLine, InstrumentFault
+from sim_instruments.faults.when import When
+from sim_instruments.hands import Slip
+from sim_instruments.scpi.instrument import Instrument
+from sim_instruments.world import World
+
+__all__ = ["FAULTS", "Fault", "FaultyInstrument", "FaultyLine", "InstrumentFault", "When", "inject"]
+
+
+@dataclass(frozen=True)
+class Fault:
+    """A fault.
+
+    Parameters
+    ----------
+    name
+        As :func:`inject` takes it.
+    where
+        ``"instrument"``, ``"hands"`` or ``"room"``.
+    make
+        A class of instrument fault, or a function ``(world) -> Slip | None``.
+    once
+        It happens one time only.
+    """
+
+    name: str
+    where: str
+    make: type[InstrumentFault] | Callable[[World], Slip | None]
+    once: bool = False
+
+    @property
+    def seen(self) -> str:
+        """What a careful engineer would see."""
+        return " ".join((inspect.getdoc(self.make) or "").split())
+
+
+_INSTRUMENT: Mapping[str, type[InstrumentFault]] = {
+    "no answer": answers.NoAnswer,
+    "late answer": answers.LateAnswer,
+    "answer cut short": answers.CutShort,
+    "wrong block length": answers.WrongBlockLength,
+    "garbage": answers.Garbage,
+    "NaN in data": answers.NotANumber,
+    "stale answer": answers.StaleAnswer,
+    "error queued": conditions.ErrorQueued,
+    "queue overflow": conditions.QueueOverflow,
+    "identity changed": answers.IdentityChanged,
+    "restart in mid-sweep": conditions.Restart,
+    "line closed": answers.LineClosed,
+    "dribbling": answers.Dribbling,
+    "unlock": conditions.Unlock,
+    "overload": conditions.Overload,
+}
+_HANDS: Mapping[str, Callable[[World], Slip | None]] = {
+    "wrong standard": slips.wrong_standard,
+    "open for short": slips.open_for_short,
+    "loose connection": slips.loose_connection,
+    "wrong port": slips.wrong_port,
+    "cable moved": slips.cable_moved,
+    "unit reversed": slips.unit_reversed,
+    "nothing connected": slips.nothing_connected,
+    "fixture left out": slips.fixture_left_out,
+    "connected late": slips.connected_late,
+}
+_ROOM: Mapping[str, Callable[[World], Slip | None]] = {
+    "temperature step": slips.temperature_step,
+    "drift": slips.drift,
+}
+
+FAULTS: Mapping[str, Fault] = {
+    **{name: Fault(name, "instrument", make, make.once) for name, make in _INSTRUMENT.items()},
+    **{name: Fault(name, "hands", make, name == "cable moved") for name, make in _HANDS.items()},
+    **{name: Fault(name, "room", make, True) for name, make in _ROOM.items()},
+}
+"""By name."""
+
+
+def inject(
+    bench: SimulatedBench,
+    name: str,
+    *,
+    after: int = 0,
+    probability: float = 1.0,
+    seed: int = 0,
+    resource: str | None = None,
+) -> SimulatedBench:
+    """A bench on which something goes wrong.
+
+    Parameters
+    ----------
+    bench
+        Its world is changed, so use what is returned from here on; several faults may be injected one after
+        the other.
+    name
+        One of :data:`FAULTS`.
+    after
+        Occasions that pass before it: answers or sweeps of an instrument, connections that it could spoil;
+        drift begins at once.
+    probability
+        At each occasion from then on.
+    seed
+        Of that chance.
+    resource
+        The instrument's resource name; none: all of them.
+
+    Raises
+    ------
+    ValueError
+        For a name, a resource, or an occasion that is none.
+
+    Examples
+    --------
+    >>> from sim_instruments.bench import load_bench
+    >>> bench = inject(load_bench("workshop", 1), "open for short")
+    >>> bench.world.connect([(["short"], [1])])
+    >>> bench.world.connection
+    'open on port 1'
+    """
+    if name not in FAULTS:
+        raise ValueError(f"there is no fault {name!r}; known are {', '.join(FAULTS)}")
+    fault = FAULTS[name]
+    when = When(name, after, probability, seed, fault.once)
+    if isinstance(fault.make, type):
+        return _into_instruments(bench, fault.make, when, resource)
+    slip = fault.make(bench.world)
+    if slip is not None:
+        bench.world.hands.slips.append((slip, when))
+    return bench
+
+
+def _into_instruments(
+    bench: SimulatedBench, make: type[InstrumentFault], when: When, resource: str | None
+) -> SimulatedBench:
+    if resource is not None and resource not in bench.instruments:
+        raise ValueError(f"there is no instrument {resource!r}; there are {', '.join(bench.instruments)}")
+    changed = {
+        name: cast(Instrument, FaultyInstrument(instrument, make(), when))
+        if resource in (None, name)
+        else instrument
+        for name, instrument in bench.instruments.items()
+    }
+    return replace(bench, instruments=changed)
