@@ -4,11 +4,21 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
-from benchrun.rf.figures import crossing, level, phase
+from benchrun.rf.figures import crossing, flat, impedance, level, linear, matrix, phase, shape
 from benchrun.rf.figures.kind import FigureKind, Found, Parameter
 
 __all__ = ["FIGURES", "FigureKind", "Found", "Parameter"]
 
 FIGURES: Mapping[str, FigureKind] = {
-    kind.name: kind for kind in (*level.KINDS, *crossing.KINDS, *phase.KINDS)
+    kind.name: kind
+    for kind in (
+        *level.KINDS,
+        *impedance.KINDS,
+        *crossing.KINDS,
+        *shape.KINDS,
+        *flat.KINDS,
+        *phase.KINDS,
+        *linear.KINDS,
+        *matrix.KINDS,
+    )
 }

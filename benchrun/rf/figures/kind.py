@@ -89,6 +89,8 @@ class FigureKind:
         Whether samples outside of its band (and the ones next to it) have no say in it.
     width
         Whether a figure of frequency is a distance between two, so that its limits lie nowhere in a sweep.
+    domain
+        ``"sweep"``: taken from S-parameters; ``"tone"``: from levels of a tone.
     between
         ``(f_hz, network, where_hz, **parameters) -> (..., k)`` in place of ``trace``, for a trace figure
         that can be taken between samples; a ``trace`` is interpolated there.
@@ -105,6 +107,7 @@ class FigureKind:
     sense: int = 0
     local: bool = True
     width: bool = False
+    domain: str = "sweep"
     between: Trace | None = None
 
     def band(self, parameters: Mapping[str, Any]) -> tuple[float, float] | None:
@@ -146,16 +149,19 @@ class FigureKind:
             low, high = parameters["against"]
             require_inside(f_hz, low, high, f"the reference of {self.name}")
         if self.scalar is not None:
-            found = self.scalar(f_hz, network, **parameters)
-            if found.value.ndim == 0 and not np.isfinite(found.value):
-                raise InvalidMeasurement(f"{self.name} cannot be told: {self.meaning}", "Look at the trace.")
-            return found
+            return self._sure(self.scalar(f_hz, network, **parameters))
         if parameters.get("at") is not None:
             value = self._values(f_hz, network, (parameters["at"],) * 2, parameters)[1][..., 0]
-            return Found(value, np.full(value.shape, parameters["at"]))
+            return self._sure(Found(value, np.full(value.shape, parameters["at"])))
         f, v = self._values(f_hz, network, parameters["over"], parameters)
         index = np.argmax(v, -1) if side == "at most" else np.argmin(v, -1)
-        return Found(np.take_along_axis(v, index[..., np.newaxis], -1)[..., 0], f[index])
+        return self._sure(Found(np.take_along_axis(v, index[..., np.newaxis], -1)[..., 0], f[index]))
+
+    def _sure(self, found: Found) -> Found:
+        """Refuse a nominal value that is none; never a silent number."""
+        if found.value.ndim == 0 and not np.isfinite(found.value):
+            raise InvalidMeasurement(f"{self.name} cannot be told: {self.meaning}", "Look at the trace.")
+        return found
 
     def _values(
         self,

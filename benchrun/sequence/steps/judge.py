@@ -8,7 +8,7 @@ from typing import Annotated, Any, ClassVar, Literal
 
 from pydantic import BeforeValidator, Discriminator, Field, Tag, WithJsonSchema, model_validator
 
-from benchrun.quantity import QuantityError, parse, render
+from benchrun.quantity import Dimension, QuantityError, parse, parse_range, render
 from benchrun.rf.figures import FIGURES, FigureKind
 from benchrun.sequence.fields import (
     LABEL,
@@ -16,6 +16,7 @@ from benchrun.sequence.fields import (
     FileModel,
     Frequency,
     FrequencyRange,
+    Impedance,
     Listed,
     Name,
     trouble,
@@ -57,6 +58,11 @@ def _rule_schema() -> WithJsonSchema:
 
 
 RuleText = Annotated[Rule, BeforeValidator(_rule), _rule_schema()]
+_KEYS = (
+    "over", "at", "against", "drop", "edge", "port", "trace", "aperture", "outer", "reference", "velocity",
+    "distance", "within",
+)  # fmt: skip
+"""What the figures take, by its name in a file."""
 _FIGURE_NAMES = WithJsonSchema({"type": "string", "enum": sorted(FIGURES)})
 
 
@@ -80,6 +86,23 @@ Bound = Annotated[
 ]
 
 
+def _length_schema(example: str) -> WithJsonSchema:
+    return WithJsonSchema({"type": "string", "examples": [example]})
+
+
+Length = Annotated[
+    float,
+    Field(ge=0, le=1e6),
+    BeforeValidator(lambda text: parse(text, Dimension.LENGTH)),
+    _length_schema("1.2 m"),
+]
+LengthRange = Annotated[
+    tuple[float, float],
+    BeforeValidator(lambda text: parse_range(text, Dimension.LENGTH)),
+    _length_schema("0.5 m to 3 m"),
+]
+
+
 class FigureLimit(FileModel):
     """A limit on one figure."""
 
@@ -95,6 +118,13 @@ class FigureLimit(FileModel):
     port: Literal[1, 2] | None = None
     trace: Literal["S21", "S12"] | None = None
     aperture: Frequency | None = Field(default=None, description="of group delay")
+    outer: Decibel | None = Field(default=None, description="the farther drop of a shape factor")
+    reference: Impedance | None = Field(default=None, description="impedance that S-parameters refer to")
+    velocity: float | None = Field(
+        default=None, gt=0, le=1, description="on the line, as a part of the speed of light"
+    )
+    distance: Length | None = Field(default=None, description="along the line, from the reference plane")
+    within: LengthRange | None = Field(default=None, description="the stretch of line to look at")
     at_most: Bound | None = Field(default=None, alias="at most", description="greatest value, with unit")
     at_least: Bound | None = Field(default=None, alias="at least", description="least value, with unit")
     rule: RuleText | None = None
@@ -125,8 +155,7 @@ class FigureLimit(FileModel):
         return self
 
     def _given(self) -> dict[str, Any]:
-        keys = ("over", "at", "against", "drop", "edge", "port", "trace", "aperture")
-        return {key: value for key in keys if (value := getattr(self, key)) is not None}
+        return {key: value for key in _KEYS if (value := getattr(self, key)) is not None}
 
     def _bound(self, side: str) -> float | None:
         text = self.at_most if side == "at most" else self.at_least
