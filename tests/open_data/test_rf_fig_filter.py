@@ -42,14 +42,16 @@ def test_the_loaded_q(data: TouchstoneData) -> None:
 
 
 def test_a_return_in_the_stop_band_moves_its_edge(data: TouchstoneData) -> None:
-    """At 910.0 MHz the README reads -43.41 dB, only 29.7 dB below the peak, though 912.18 was 30 dB down."""
+    """At 910.0 MHz the README reads -43.41 dB, 29.7 dB below the peak, though 912.18 MHz was 30 dB down."""
     lower = measure(data, "stop-band edge", drop=30.0, edge="lower", trace="S21").value
     upper = measure(data, "stop-band edge", drop=30.0, edge="upper", trace="S21").value
     assert lower < 910.0e6
-    assert_allclose(upper, 916.598e6, atol=600)
+    assert upper > 916.598e6 + 1e6  # it comes back above as well
     level = 20 * np.log10(np.abs(data.two_port.s21))
     assert np.all(level[data.f_hz < lower] < level.max() - 30.0)
-    assert level[np.searchsorted(data.f_hz, lower)] > level.max() - 30.0
+    assert np.all(level[data.f_hz > upper] < level.max() - 30.0)
+    beside = level[[np.searchsorted(data.f_hz, lower), np.searchsorted(data.f_hz, upper) - 1]]
+    assert np.all(beside > level.max() - 30.0)
 
 
 def test_the_nearest_stop_band_crossing(data: TouchstoneData) -> None:
