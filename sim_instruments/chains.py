@@ -63,7 +63,7 @@ def between(
     power_dbm, driven
         Level and port of the wave that comes in; none: low.
     """
-    ends = [open_end(f_hz), open_end(f_hz)]
+    ends: dict[int, Plane] = {}
     for ports, parts, made in rows:
         joints = made or [thru(len(f_hz))] * (len(parts) + 1)
         if len(ports) == 2:
@@ -78,8 +78,8 @@ def between(
         gamma = m[:, 0, 0] if last.ports == 1 else seen_through(m, open_end(f_hz))
         for part, joint in zip(reversed(before), reversed(joints[1 : len(parts)]), strict=True):
             gamma = seen_through(join(part.matrix(f_hz, around), joint), gamma)
-        ends[ports[0] - 1] = seen_through(joints[0], gamma)
-    return both(*ends)
+        ends[ports[0]] = seen_through(joints[0], gamma)
+    return both(*(ends[port] if port in ends else open_end(f_hz) for port in (1, 2)))
 
 
 def _driven(

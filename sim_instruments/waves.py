@@ -12,8 +12,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 __all__ = [
-    "Matrix", "Plane", "Real", "both", "chain", "flip", "from_abcd", "join", "line", "seen_through", "thru",
-    "two",
+    "Matrix", "Plane", "Real", "both", "chain", "empty", "flip", "from_abcd", "join", "line", "seen_through",
+    "thru", "two",
 ]  # fmt: skip
 
 Matrix: TypeAlias = NDArray[np.complex128]
@@ -23,16 +23,22 @@ Plane: TypeAlias = NDArray[np.complex128]
 Real: TypeAlias = NDArray[np.float64]
 
 
+def empty(points: int) -> Matrix:
+    """Room for a matrix, each plane in one piece of memory: everything here works plane by plane."""
+    return np.empty((2, 2, points), np.complex128).transpose(2, 0, 1)
+
+
 def two(s11: Plane, s12: Plane, s21: Plane, s22: Plane) -> Matrix:
     """Four planes as one matrix."""
-    m = np.empty((len(s11), 2, 2), np.complex128)
+    m = empty(len(s11))
     m[:, 0, 0], m[:, 0, 1], m[:, 1, 0], m[:, 1, 1] = s11, s12, s21, s22
     return m
 
 
 def thru(points: int) -> Matrix:
     """Nothing at all between two ports."""
-    m = np.zeros((points, 2, 2), np.complex128)
+    m = empty(points)
+    m[:, 0, 0] = m[:, 1, 1] = 0.0
     m[:, 0, 1] = m[:, 1, 0] = 1.0
     return m
 
@@ -44,7 +50,8 @@ def flip(a: Matrix) -> Matrix:
 
 def both(left: Plane, right: Plane) -> Matrix:
     """Two reflections that do not know of each other."""
-    m = np.zeros((len(left), 2, 2), np.complex128)
+    m = empty(len(left))
+    m[:, 0, 1] = m[:, 1, 0] = 0.0
     m[:, 0, 0], m[:, 1, 1] = left, right
     return m
 
@@ -110,5 +117,11 @@ def line(
         At ``at_hz``; grows with the root of frequency (skin effect).
     """
     gamma = loss_db / 8.685889638 * np.sqrt(f_hz / at_hz) + 2j * np.pi * f_hz * delay_s
-    cosh, sinh = np.cosh(gamma), np.sinh(gamma)
-    return from_abcd(cosh, np.asarray(z_ohm * sinh), np.asarray(sinh / z_ohm), cosh, z0)
+    there = np.exp(-gamma)
+    back = 1.0 / there
+    cosh, sinh = 0.5 * (back + there), 0.5 * (back - there)
+    step, mean = (z_ohm / z0 - z0 / z_ohm) * sinh, (z_ohm / z0 + z0 / z_ohm) * sinh
+    total = 2.0 * cosh + mean
+    reflected = np.asarray(step / total, np.complex128)
+    across = np.asarray(2.0 / total, np.complex128)
+    return two(reflected, across, across, reflected)

@@ -54,7 +54,13 @@ class Noise:
         seen = m
         if np.isfinite(self.compression_dbm):
             seen = m * self.compressed(power_dbm + 20 * np.log10(np.abs(m) + 1e-30))
-        return np.asarray(seen * (1 + trace * draws[0]) + floor * draws[1])
+        noise: Matrix = draws[0]  # in place: fresh draws belong to nobody else
+        noise *= trace
+        noise += 1.0
+        noise *= seen
+        draws[1] *= floor
+        noise += draws[1]
+        return noise
 
     def compressed(self, level_dbm: Real) -> Real:
         """Factor that a receiver reads too low, any shape: -0.1 dB at the stated level, cubic far below."""
@@ -76,6 +82,7 @@ class Noise:
 
     def _complex(self, count: int, shape: tuple[int, ...]) -> Matrix:
         """Complex normal draws of unit variance."""
-        draws = self.generator.standard_normal((count, *shape, 2))
+        points, *ports = shape
+        draws = self.generator.standard_normal((count, *ports, points, 2))
         draws *= np.sqrt(0.5)
-        return np.asarray(draws.view(np.complex128)[..., 0])
+        return np.moveaxis(draws.view(np.complex128)[..., 0], -1, 1)

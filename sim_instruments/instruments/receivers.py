@@ -18,7 +18,7 @@ from sim_instruments.draws import Draws
 from sim_instruments.instruments.ageing import Ageing
 from sim_instruments.instruments.noise import Noise
 from sim_instruments.values import number
-from sim_instruments.waves import Matrix, Plane, Real, chain, flip, join, line, two
+from sim_instruments.waves import Matrix, Plane, Real, chain, empty, flip, join, line, two
 from sim_instruments.world import World
 
 __all__ = ["Receivers", "TrueTerms", "WorldReadings"]
@@ -108,7 +108,7 @@ class Receivers:
         bend
             How far the test cables were moved.
         """
-        m = np.empty((len(f_hz), 2, 2), np.complex128)
+        m = empty(len(f_hz))
         shape = self._shape(f_hz)
         boxes = {port: self._source(f_hz, port, temperature_c, time_s, bend) for port in (1, 2)}
         for port, far in ((1, 2), (2, 1)):

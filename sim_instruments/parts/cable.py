@@ -11,7 +11,7 @@ import numpy as np
 from sim_instruments.draws import Draws
 from sim_instruments.parts.base import Part, Surroundings, known_keys, unknown_fault
 from sim_instruments.values import number, share
-from sim_instruments.waves import Matrix, Plane, Real, chain, from_abcd
+from sim_instruments.waves import Matrix, Plane, Real, chain, from_abcd, two
 
 __all__ = ["Section", "cable", "transmission_line"]
 
@@ -51,9 +51,7 @@ class Section:
         loss_np = (self.conductor_db * np.sqrt(ghz) + self.dielectric_db * ghz) / 8.685889638
         through: Plane = np.exp(-loss_np - 2j * np.pi * f_hz * delay)
         if self.z_ohm == 50.0:
-            m = np.zeros((len(f_hz), 2, 2), np.complex128)
-            m[:, 0, 1] = m[:, 1, 0] = through
-            return m
+            return two(zero := np.zeros_like(through), through, through, zero)
         cosh, sinh = (1 / through + through) / 2, (1 / through - through) / 2
         return from_abcd(cosh, np.asarray(self.z_ohm * sinh), np.asarray(sinh / self.z_ohm), cosh)
 
