@@ -17,22 +17,24 @@ def command(file: str, simulated: bool) -> int:
     """
     from benchrun.clock import Clock, SystemClock
     from benchrun.engine.benchtop import Benchtop, ask_health
+    from benchrun.engine.plan import load_dialects
     from benchrun.engine.rehearsal import prepare_rehearsal
-    from benchrun.instruments.dialect import load_dialect
+    from benchrun.instruments.dialect import Dialect
     from benchrun.sequence.bench import Bench
     from benchrun.sequence.files import read
     from benchrun.sequence.find import find
 
     loaded = read(find("bench", file), Bench)
-    place = loaded.document.problem("", ("instruments", "analyzer", "dialect"))
-    dialect = load_dialect(loaded.model.analyzer.dialect, place=place)
+    dialects = load_dialects(loaded, loaded.model.instruments)
+    dialect = dialects.pop("analyzer", None)
+    assert dialect is None or isinstance(dialect, Dialect)  # by its role
     library: object = None
     clock: Clock = SystemClock()
     if simulated:
         rehearsal = prepare_rehearsal(loaded, 1)
         library, clock = rehearsal.library, rehearsal.clock
     click.echo(f"{loaded.model.bench}: {loaded.model.title}")
-    with Benchtop(loaded.model, dialect, library, clock) as top:
+    with Benchtop(loaded.model, dialect, library, clock, dialects) as top:
         troubles = ask_health(
             top, lambda f: click.echo(f"  {f.role} at {f.resource}: {f.identity.text} ({f.identity.origin})")
         )

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from types import TracebackType
 from typing import Any
@@ -11,11 +11,15 @@ from benchrun.clock import Clock
 from benchrun.errors import IdentityError, InstrumentError
 from benchrun.instruments.analyzer import NetworkAnalyzer
 from benchrun.instruments.dialect import Dialect
+from benchrun.instruments.generator import SignalGenerator
+from benchrun.instruments.scalar_dialects import GeneratorDialect, SpectrumDialect
+from benchrun.instruments.spectrum import SpectrumAnalyzer
 from benchrun.scpi.identity import Identity
 from benchrun.scpi.opening import open_manager, open_session
 from benchrun.scpi.session import Session
 from benchrun.scpi.transcript import Transcript
 from benchrun.sequence.bench import Bench, Instrument
+from benchrun.sequence.fields import FileModel
 
 __all__ = ["Benchtop", "Found", "ask_health"]
 
@@ -37,24 +41,36 @@ class Benchtop:
     bench
         The bench.
     dialect
-        Of its analyzer.
+        Of its network analyzer; None where it is not needed, and then not opened.
     library
         A VISA library to use instead of those that the bench file names: the rehearsal's.
     clock
         Bench time.
+    others
+        Dialects of the other instruments to open, by role.
     """
 
-    def __init__(self, bench: Bench, dialect: Dialect, library: Any, clock: Clock) -> None:
+    def __init__(
+        self,
+        bench: Bench,
+        dialect: Dialect | None,
+        library: Any,
+        clock: Clock,
+        others: Mapping[str, FileModel] | None = None,
+    ) -> None:
         self.bench = bench
         self.dialect = dialect
+        self.others = dict(others or {})
         self.library = library
         self.clock = clock
         self.transcript = Transcript()
         self.found: tuple[Found, ...] = ()
-        self.analyzer: NetworkAnalyzer | None = None
         self.ready = False
         """Whether the whole bench was opened and brought into a known state."""
-        self._session: Session | None = None
+        self._sessions: dict[str, Session] = {}
+        self.analyzer: NetworkAnalyzer | None = None
+        self.generator: SignalGenerator | None = None
+        self.spectrum: SpectrumAnalyzer | None = None
 
     @property
     def origin(self) -> str:
@@ -64,8 +80,8 @@ class Benchtop:
 
     def open(
         self, tell: Callable[[Found], None] = lambda _: None, agreed: Callable[[], None] = lambda: None
-    ) -> NetworkAnalyzer:
-        """Open, ask who is there, and bring everything into a known state.
+    ) -> None:
+        """Open what the plan needs, ask who is there, and bring everything into a known state.
 
         Parameters
         ----------
@@ -80,33 +96,49 @@ class Benchtop:
             If another instrument stands there than the bench file says.
         TransportError, ReplyError, InstrumentError
         """
-        spec = self.bench.analyzer
-        manager = open_manager(self.library if self.library is not None else spec.library)
-        self._session = session = open_session(manager, spec.resource, self.clock, self.transcript)
-        identity = session.identity()
-        found = Found("analyzer", spec.resource, identity)
-        self.found = (found,)
-        tell(found)
-        _check_identity(spec, identity)
+        roles = (*(("analyzer",) if self.dialect is not None else ()), *self.others)
+        for role in roles:
+            spec = self.bench.instruments[role]
+            manager = open_manager(self.library if self.library is not None else spec.library)
+            session = open_session(manager, spec.resource, self.clock, self.transcript)
+            self._sessions[role] = session
+            found = Found(role, spec.resource, session.identity())
+            self.found = (*self.found, found)
+            tell(found)
+            _check_identity(spec, found.identity)
         agreed()
-        # From here on it is ours; to another instrument nothing is ever sent, not even "source off".
-        self.analyzer = NetworkAnalyzer(session, self.dialect)
-        self.analyzer.replayed = identity.origin == "recorded"
-        self.analyzer.preset()
+        # From here on they are ours; to another instrument nothing is ever sent, not even "source off".
+        if self.dialect is not None:
+            self.analyzer = NetworkAnalyzer(self._sessions["analyzer"], self.dialect)
+            self.analyzer.replayed = self.found[0].identity.origin == "recorded"
+        generator, spectrum = self.others.get("generator"), self.others.get("spectrum analyzer")
+        if isinstance(generator, GeneratorDialect):
+            self.generator = SignalGenerator(self._sessions["generator"], generator)
+        if isinstance(spectrum, SpectrumDialect):
+            self.spectrum = SpectrumAnalyzer(self._sessions["spectrum analyzer"], spectrum)
+        for instrument in self._instruments():
+            instrument.preset()
         self.ready = True
-        return self.analyzer
+
+    def _instruments(self) -> tuple[NetworkAnalyzer | SignalGenerator | SpectrumAnalyzer, ...]:
+        """What is ours, the sources of the greatest level first: the order of making safe."""
+        every = (self.generator, self.analyzer, self.spectrum)
+        return tuple(instrument for instrument in every if instrument is not None)
+
+    @property
+    def ours(self) -> bool:
+        """Whether anything was recognised as ours, and may have been set."""
+        return bool(self._instruments())
 
     def make_safe(self) -> tuple[str, ...]:
         """Switch every source off; what could not be switched off is said."""
-        if self.analyzer is None or self.analyzer.session.closed:
-            return ()
-        left = self.analyzer.make_safe()
-        return (left,) if left else ()
+        left = [i.make_safe() for i in self._instruments() if not i.session.closed]
+        return tuple(text for text in left if text)
 
     def close(self) -> None:
         """Close the lines."""
-        if self._session is not None:
-            self._session.close()
+        for session in self._sessions.values():
+            session.close()
 
     def __enter__(self) -> Benchtop:
         return self
@@ -144,9 +176,14 @@ def ask_health(top: Benchtop, tell: Callable[[Found], None]) -> list[str]:
     BenchError
         If one does not answer, or is another than expected.
     """
-    analyzer = top.open(tell)
-    try:
-        analyzer.session.raise_errors("preset")
-        return analyzer.health()
-    except InstrumentError as error:
-        return [str(error)]
+    top.open(tell)
+    troubles: list[str] = []
+    for instrument in (top.analyzer, top.generator, top.spectrum):
+        if instrument is not None:
+            try:
+                instrument.session.raise_errors("preset")
+                if isinstance(instrument, NetworkAnalyzer):
+                    troubles += instrument.health()
+            except InstrumentError as error:
+                troubles.append(str(error))
+    return troubles

@@ -6,9 +6,9 @@ import hashlib
 from collections.abc import Iterable
 from dataclasses import dataclass, field
 
+from benchrun.evaluate.readings import Raw, encode, suffix
 from benchrun.record.payload import ReadingEntry, safe_name
-from benchrun.rf.touchstone import write
-from benchrun.rf.twoport import FloatArray, TwoPort
+from benchrun.rf.twoport import FloatArray
 
 __all__ = ["Kept", "Reading"]
 
@@ -22,29 +22,29 @@ class Reading:
     step, hookup
         Which step took it, of what.
     raw
-        Planes ``(f,)``.
+        Planes ``(f,)``, or levels.
     contents
-        As Touchstone; reading it back gives the same numbers to the last bit.
+        Its file: Touchstone, or a table; reading it back gives the same numbers to the last bit.
     taken_s
         Bench clock, seconds.
     """
 
     step: str
     hookup: str
-    raw: TwoPort
+    raw: Raw
     contents: bytes
     sha256: str
     taken_s: float
 
     @classmethod
-    def of(cls, step: str, hookup: str, f_hz: FloatArray, raw: TwoPort, taken_s: float) -> Reading:
+    def of(cls, step: str, hookup: str, f_hz: FloatArray, raw: Raw, taken_s: float) -> Reading:
         """From planes ``(f,)`` on a grid ``(f,)``."""
-        contents = write(f_hz, raw, f"raw: {hookup}")
+        contents = encode(f_hz, raw, f"raw: {hookup}")
         return cls(step, hookup, raw, contents, hashlib.sha256(contents).hexdigest(), taken_s)
 
     def entry(self, number: int, start_s: float) -> ReadingEntry:
         """As the payload lists it: the time counts from the run's start, negative for what is older."""
-        file = f"raw/{number:02d}-{safe_name(f'{self.step} {self.hookup}')}.s2p"
+        file = f"raw/{number:02d}-{safe_name(f'{self.step} {self.hookup}')}{suffix(self.raw)}"
         taken_s = round(self.taken_s - start_s, 6)
         return ReadingEntry(step=self.step, hookup=self.hookup, file=file, taken_s=taken_s)
 
@@ -64,7 +64,7 @@ class Kept:
         """Keep those that an earlier unit's calibration was made of."""
         self.readings.extend(readings)
 
-    def of(self, step: str) -> dict[str, TwoPort]:
+    def of(self, step: str) -> dict[str, Raw]:
         """Raw readings of a step by hook-up."""
         return {r.hookup: r.raw for r in self.readings if r.step == step}
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import datetime
 import hashlib
 import json
-from collections.abc import Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path, PurePath
 from typing import TypeVar
@@ -18,11 +18,13 @@ from benchrun.evaluate.chain import hookups
 from benchrun.evaluate.procedure import Procedure
 from benchrun.hookup import Hookup
 from benchrun.instruments.dialect import Dialect, load_dialect
+from benchrun.instruments.scalar_dialects import load_generator_dialect, load_spectrum_dialect
 from benchrun.record.payload import safe_name
 from benchrun.rf.touchstone import TouchstoneData
 from benchrun.rf.touchstone import read as read_touchstone
 from benchrun.sequence.bench import Bench
 from benchrun.sequence.checks import check_bench, check_kits, check_masks, check_sequence
+from benchrun.sequence.fields import FileModel
 from benchrun.sequence.files import Loaded, read
 from benchrun.sequence.find import find
 from benchrun.sequence.fixtures import check_fixtures
@@ -69,7 +71,9 @@ class Plan:
     sequence, bench
         The two files.
     dialect
-        How the analyzer wants to be spoken to.
+        How the network analyzer wants to be spoken to; None where no step needs one.
+    others
+        Dialects of other instruments that the steps need, by role.
     procedure
         The arithmetic.
     inputs
@@ -80,7 +84,8 @@ class Plan:
 
     sequence: Loaded[Sequence]
     bench: Loaded[Bench]
-    dialect: Dialect
+    dialect: Dialect | None
+    others: Mapping[str, FileModel]
     procedure: Procedure
     inputs: Mapping[str, tuple[str, bytes]]
     digest: str
@@ -169,19 +174,41 @@ def make_plan(sequence: str, bench: str, today: datetime.date) -> Plan:
     loaded = read(find("sequence", sequence), Sequence)
     named = resolve(loaded, today)
     problems = list(named.problems)
-    bench_file, dialect = None, None
+    bench_file, dialects = None, dict[str, FileModel]()
     try:
         bench_file = read(find("bench", bench), Bench)
-        place = bench_file.document.problem("", ("instruments", "analyzer", "dialect"))
-        dialect = load_dialect(bench_file.model.analyzer.dialect, place=place)
+        dialects = load_dialects(bench_file, loaded.model.roles)
         problems += check_bench(loaded, bench_file.model)
     except InputError as error:
         problems += error.problems
-    if problems or bench_file is None or dialect is None:
+    if problems or bench_file is None:
         raise InputError(problems)
+    dialect = dialects.pop("analyzer", None)
+    assert dialect is None or isinstance(dialect, Dialect)  # by its role
     inputs = _inputs(loaded, bench_file, named)
     procedure = build({name: raw for name, (_, raw) in inputs.items()})
-    return Plan(loaded, bench_file, dialect, procedure, inputs, _digest(inputs))
+    return Plan(loaded, bench_file, dialect, dialects, procedure, inputs, _digest(inputs))
+
+
+def load_dialects(bench: Loaded[Bench], roles: Iterable[str]) -> dict[str, FileModel]:
+    """The dialects of a bench's instruments, for those roles that it has.
+
+    Raises
+    ------
+    InputError
+        At the place in the bench file that names one which is not there, or for a wrong dialect file.
+    """
+    loaders: Mapping[str, Callable[[str, Problem], FileModel]] = {
+        "analyzer": lambda name, place: load_dialect(name, place=place),
+        "generator": load_generator_dialect,
+        "spectrum analyzer": load_spectrum_dialect,
+    }
+    found: dict[str, FileModel] = {}
+    for role, instrument in bench.model.instruments.items():
+        if role in roles:
+            place = bench.document.problem("", ("instruments", role, "dialect"))
+            found[role] = loaders[role](instrument.dialect, place)
+    return found
 
 
 def _inputs(sequence: Loaded[Sequence], bench: Loaded[Bench], named: Named) -> dict[str, tuple[str, bytes]]:
@@ -235,9 +262,8 @@ def check_file(path: Path, today: datetime.date) -> list[Problem]:
     if isinstance(model, Sequence):
         return list(resolve(Loaded(model, document, path), today).problems)
     if isinstance(model, Bench):
-        place = document.problem("", ("instruments", "analyzer", "dialect"))
         try:
-            load_dialect(model.analyzer.dialect, place=place)
+            load_dialects(Loaded(model, document, path), model.instruments)
         except InputError as error:
             return list(error.problems)
     if isinstance(model, KitFile) and model.due and model.due < today:

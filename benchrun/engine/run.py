@@ -170,7 +170,8 @@ def run(job: Job) -> tuple[Outcome, ...]:
     _prepare(job.records)
     outcomes: list[Outcome] = []
     shared = _Shared(State(job.plan.procedure))
-    top = Benchtop(job.plan.bench.model, job.plan.dialect, job.library, job.clock)
+    plan = job.plan
+    top = Benchtop(plan.bench.model, plan.dialect, job.library, job.clock, plan.others)
     with StopSignals() as stop, top:
         for serial in job.units:
             outcomes.append(_UnitRun(job, serial, top, shared, stop).go())
@@ -207,7 +208,7 @@ class _UnitRun:
         started, began = self.job.clock.utc(), time.perf_counter()
         ending = self._measure()
         left_on = self.top.make_safe()
-        if self.top.analyzer is not None:
+        if self.top.ours:
             self.emit(MadeSafe(left_on=left_on))
         figures = self.state.figures
         self.emit(
@@ -297,11 +298,17 @@ class _UnitRun:
         self.signer = self.shared.signer = self.shared.signer or self.job.signer(self._origin)
 
     def _steps(self) -> None:
-        analyzer = self.top.analyzer
-        assert analyzer is not None  # opened in _begin
         plan = self.job.plan
         work = AtWork(
-            plan.procedure, self.state, analyzer, self.job.hands, self.job.clock, self.kept, self.emit
+            procedure=plan.procedure,
+            state=self.state,
+            analyzer=self.top.analyzer,
+            operator=self.job.hands,
+            clock=self.job.clock,
+            kept=self.kept,
+            emit=self.emit,
+            generator=self.top.generator,
+            spectrum=self.top.spectrum,
         )
         for number, step in enumerate(plan.sequence.model.steps, 1):
             execution = EXECUTIONS[step.kind]

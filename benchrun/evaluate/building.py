@@ -37,11 +37,14 @@ def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure
     def of(kind: str) -> dict[str, bytes]:
         return {name.split(":", 1)[1]: raw for name, raw in files.items() if name.startswith(f"{kind}:")}
 
+    bench = load_model(files["bench"], "bench", Bench).model
     return Procedure(
         load_model(files["sequence"], "sequence", Sequence).model,
         {name: load_model(raw, name, KitFile).model.build() for name, raw in of("kit").items()},
         {name: load_model(raw, name, MaskFile).model.build() for name, raw in of("mask").items()},
         {name: read_touchstone(raw, name) for name, raw in of("fixture").items()},
-        load_model(files["bench"], "bench", Bench).model.uncertainty.terms,
+        bench.uncertainty.terms,
         noise_seed,
+        bench.uncertainty.level_terms,
+        bench.scalar_ports,
     )

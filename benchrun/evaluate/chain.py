@@ -5,10 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.readings import Raw
 from benchrun.evaluate.state import State
 from benchrun.evaluate.steps import ARITHMETIC
 from benchrun.hookup import Hookup
-from benchrun.rf.twoport import TwoPort
 from benchrun.sequence.steps import StepModel
 
 __all__ = ["apply", "evaluate", "hookups"]
@@ -19,7 +19,7 @@ def hookups(step: StepModel, procedure: Procedure) -> tuple[Hookup, ...]:
     return ARITHMETIC[step.kind].hookups(step, procedure)
 
 
-def apply(step: StepModel, state: State, readings: Mapping[str, TwoPort]) -> None:
+def apply(step: StepModel, state: State, readings: Mapping[str, Raw]) -> None:
     """Carry out one step's arithmetic.
 
     Raises
@@ -30,7 +30,7 @@ def apply(step: StepModel, state: State, readings: Mapping[str, TwoPort]) -> Non
     ARITHMETIC[step.kind].apply(step, state, readings)
 
 
-def evaluate(procedure: Procedure, readings: Mapping[str, Mapping[str, TwoPort]]) -> State:
+def evaluate(procedure: Procedure, readings: Mapping[str, Mapping[str, Raw]]) -> State:
     """All steps on kept readings, as an audit does it.
 
     Parameters

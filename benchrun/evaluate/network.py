@@ -7,13 +7,14 @@ from typing import TypeAlias
 
 import numpy as np
 
+from benchrun.rf.tone import Tone
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 from benchrun.uncertainty.decision import COVERAGE_FACTOR
 
 __all__ = ["Data", "Network", "combine"]
 
-Data: TypeAlias = TwoPort | ComplexArray
-"""A two-port, or the reflection of a one-port; planes of shape ``(..., f)``."""
+Data: TypeAlias = TwoPort | ComplexArray | Tone
+"""A two-port, or the reflection of a one-port, planes of shape ``(..., f)``; or a tone's levels."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -51,6 +52,8 @@ class Network:
         """Nominal values as ``(f, n, n)``."""
         if isinstance(self.nominal, TwoPort):
             return self.nominal.matrix
+        if isinstance(self.nominal, Tone):
+            raise TypeError("a tone has no S-parameters")
         return self.nominal[:, np.newaxis, np.newaxis]
 
     def plane(self, name: str) -> tuple[ComplexArray, ComplexArray | None]:
@@ -64,9 +67,9 @@ class Network:
         if isinstance(self.nominal, TwoPort):
             varied = self.varied.parameter(name) if isinstance(self.varied, TwoPort) else None
             return self.nominal.parameter(name), varied
-        if name not in ("S11", "S22"):
+        if name not in ("S11", "S22") or isinstance(self.nominal, Tone):
             raise KeyError(name)
-        return self.nominal, None if self.varied is None else np.asarray(self.varied)
+        return self.nominal, None if self.varied is None else np.asarray(self.varied, np.complex128)
 
     def expanded(self, name: str) -> FloatArray:
         """Expanded uncertainty of one parameter as a complex number, linear, ``(f,)``.

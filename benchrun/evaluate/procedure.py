@@ -10,6 +10,7 @@ from benchrun.rf.kit import Kit
 from benchrun.rf.masks import Mask
 from benchrun.rf.touchstone import TouchstoneData
 from benchrun.sequence.models import Sequence
+from benchrun.uncertainty.level import LevelTerms
 from benchrun.uncertainty.residual import ResidualTerms
 
 __all__ = ["NOISE_SEED", "Procedure"]
@@ -30,6 +31,10 @@ class Procedure:
         By the name that the sequence uses.
     residual
         Declared residual terms of the bench.
+    level
+        Declared uncertainty of levels.
+    scalar_ports
+        Ports of the generator and of the spectrum analyzer.
     noise_seed
         Seed of the noise draws; stands in the record.
     """
@@ -40,6 +45,8 @@ class Procedure:
     fixtures: Mapping[str, TouchstoneData] = field(default_factory=dict)
     residual: ResidualTerms = ResidualTerms()
     noise_seed: int = NOISE_SEED
+    level: LevelTerms = LevelTerms()
+    scalar_ports: tuple[int, int] = (3, 4)
 
     def unit_hookup(self, port: int) -> Hookup:
         """How the unit is connected: in its fixture, between the ports or on ``port`` alone."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from benchrun.evaluate.state import State
+from benchrun.rf.tone import Tone
 from benchrun.rf.touchstone import write
 
 __all__ = ["result_files"]
@@ -19,9 +20,11 @@ def result_files(state: State) -> dict[tuple[str, str], tuple[str, bytes]]:
     found = {}
     for step, network in state.networks.items():
         kind = state.kinds[step]
-        if kind == "uncorrected":  # the raw reading itself is kept already
+        if kind in ("uncorrected", "tone"):  # the raw reading itself is kept already
             continue
         path = f"{kind}/{step}.s{network.ports}p"
-        contents = write(network.f_hz, network.nominal, f"{step}: {kind}", network.z0_ohm)
+        nominal = network.nominal
+        assert not isinstance(nominal, Tone)  # its kind is "tone"
+        contents = write(network.f_hz, nominal, f"{step}: {kind}", network.z0_ohm)
         found[step, kind] = path, contents
     return found

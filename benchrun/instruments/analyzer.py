@@ -246,7 +246,8 @@ class NetworkAnalyzer:
             return
         if all(np.array_equal(a, b) for a, b in zip(raw.planes, before.planes, strict=True)):
             raise InvalidMeasurement(
-                f"{self.session.name} gave the very same readings as before, digit for digit: they are stale.",
+                f"{self.session.name} gave the very same readings as before, digit for digit: "
+                "they are stale.",
                 "Trigger a new sweep; if it stays, reset the analyzer.",
             )
 

@@ -11,7 +11,7 @@ from __future__ import annotations
 import difflib
 import string
 from pathlib import Path
-from typing import Annotated, Literal
+from typing import Annotated, Literal, TypeVar
 
 from pydantic import BeforeValidator, Field, model_validator
 
@@ -20,13 +20,16 @@ from benchrun.sequence.fields import FileModel, Listed, Name, trouble
 from benchrun.sequence.files import load_model
 from benchrun.sequence.loading import read_bytes
 
-__all__ = ["Dialect", "load_dialect"]
+__all__ = ["Dialect", "find_dialect", "load_dialect", "template"]
+
+M = TypeVar("M", bound=FileModel)
 
 _SWEEP = ("averages", "averaging", "bandwidth_hz", "list_hz", "points", "power_dbm", "start_hz", "stop_hz")
 _READING = ("receiver", "source")
 
 
-def _template(known: tuple[str, ...]) -> BeforeValidator:
+def template(known: tuple[str, ...]) -> BeforeValidator:
+    """A check that text holds no other placeholders than these."""
     allowed = f"allowed here are {', '.join(known)}" if known else "none is allowed here"
 
     def check(value: object) -> object:
@@ -42,9 +45,9 @@ def _template(known: tuple[str, ...]) -> BeforeValidator:
 
 
 _LENGTH = Field(min_length=1, max_length=200)
-Words = Annotated[str, _template(()), _LENGTH]
-SweepMessages = Annotated[tuple[Annotated[str, _template(_SWEEP), _LENGTH], ...], Listed]
-ReadingWords = Annotated[str, _template(_READING), _LENGTH]
+Words = Annotated[str, template(()), _LENGTH]
+SweepMessages = Annotated[tuple[Annotated[str, template(_SWEEP), _LENGTH], ...], Listed]
+ReadingWords = Annotated[str, template(_READING), _LENGTH]
 Messages = Annotated[tuple[Words, ...], Listed]
 Form = Literal["ASCii", "REAL,32 NORMal", "REAL,64 NORMal", "REAL,32 SWAPped", "REAL,64 SWAPped"]
 
@@ -142,7 +145,17 @@ def load_dialect(name: str, folder: Path | None = None, place: Problem | None = 
     InputError
         If there is none, or the file is wrong.
     """
-    folder = folder or Path(__file__).parent / "dialects"
+    return find_dialect(name, Dialect, folder or Path(__file__).parent / "dialects", place)
+
+
+def find_dialect(name: str, model: type[M], folder: Path, place: Problem | None) -> M:
+    """Load the dialect file of a name from a folder.
+
+    Raises
+    ------
+    InputError
+        If there is none, or the file is wrong.
+    """
     known = sorted(p.stem for p in folder.glob("*.yaml"))
     if name not in known:
         close = difflib.get_close_matches(name, known, 1, 0.5)
@@ -150,4 +163,4 @@ def load_dialect(name: str, folder: Path | None = None, place: Problem | None = 
         at = place or Problem("")
         raise InputError(Problem(f"there is no dialect {name!r}", at.file, at.line, at.column, advice))
     path = folder / f"{name}.yaml"
-    return load_model(read_bytes(path), str(path), Dialect, path).model
+    return load_model(read_bytes(path), str(path), model, path).model

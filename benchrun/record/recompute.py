@@ -5,12 +5,11 @@ from __future__ import annotations
 from benchrun.errors import CouldNotCheck, InvalidMeasurement
 from benchrun.evaluate.building import build
 from benchrun.evaluate.chain import apply
+from benchrun.evaluate.readings import Raw, decode
 from benchrun.evaluate.results import result_files
 from benchrun.evaluate.state import State
 from benchrun.record.audit import Recomputed
 from benchrun.record.verify import Record
-from benchrun.rf.touchstone import read as read_touchstone
-from benchrun.rf.twoport import TwoPort
 
 __all__ = ["recompute"]
 
@@ -35,10 +34,10 @@ def recompute(record: Record) -> Recomputed:
     procedure = build(
         {name: record.content(file) for name, file in payload.inputs.items()}, payload.residual_seed
     )
-    readings: dict[str, dict[str, TwoPort]] = {}
+    readings: dict[str, dict[str, Raw]] = {}
     for entry in payload.readings:
-        data = read_touchstone(record.content(entry.file), entry.file)
-        readings.setdefault(entry.step, {})[entry.hookup] = data.two_port
+        raw = decode(record.content(entry.file), entry.file)
+        readings.setdefault(entry.step, {})[entry.hookup] = raw
     state, cut_short = State(procedure), payload.conclusion in ("invalid", "stopped")
     try:
         for step in procedure.sequence.steps:

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Literal
+from typing import Annotated, Literal, TypeAlias
 
-from pydantic import BeforeValidator, Field
+from pydantic import BeforeValidator, Field, model_validator
 
-from benchrun.sequence.fields import FileModel, FrequencyRange, Listed, Name, PowerRange
+from benchrun.sequence.fields import FileModel, FrequencyRange, Listed, Name, PowerRange, trouble
 from benchrun.sequence.models import Withstands
+from benchrun.uncertainty.level import LEVEL_TERMS, LevelTerms
 from benchrun.uncertainty.residual import DECIBEL_LOSS, DECIBEL_RIPPLE, ResidualTerms
 
-__all__ = ["Bench", "Instrument", "Port", "Range", "Uncertainty"]
+__all__ = ["Bench", "Instrument", "Port", "Range", "Role", "Uncertainty"]
+
+
+Role: TypeAlias = Literal["analyzer", "generator", "spectrum analyzer"]
+"""What an instrument does on a bench; ``analyzer`` is the network analyzer."""
 
 
 class Port(FileModel):
@@ -44,8 +49,8 @@ class Instrument(FileModel):
     library: str = Field(default="", description='VISA library; empty for the system\'s, "@py" for pyvisa-py')
     dialect: Name
     identity: Expected = Expected()
-    ports: dict[Literal[1, 2], Port] = Field(
-        default_factory=dict, json_schema_extra={"propertyNames": {"enum": ["1", "2"]}}
+    ports: dict[Annotated[int, Field(ge=1, le=9)], Port] = Field(
+        default_factory=dict, json_schema_extra={"propertyNames": {"pattern": "^[1-9]$"}}
     )
     range: Range | None = None
 
@@ -53,6 +58,12 @@ class Instrument(FileModel):
 def _residual(value: object) -> object:
     if isinstance(value, dict):
         ResidualTerms.from_mapping({str(k): str(v) for k, v in value.items()})  # refuses what it cannot read
+    return value
+
+
+def _level(value: object) -> object:
+    if isinstance(value, dict):
+        LevelTerms.from_mapping({str(k): str(v) for k, v in value.items()})  # refuses what it cannot read
     return value
 
 
@@ -66,6 +77,17 @@ class Uncertainty(FileModel):
         default_factory=dict,
         json_schema_extra={"propertyNames": {"enum": list(_KNOWN)}, "examples": [{"directivity": "44 dB"}]},
     )
+
+    level: Annotated[dict[str, str], BeforeValidator(_level)] = Field(
+        default_factory=dict,
+        description="standard uncertainties of generator and spectrum analyzer",
+        json_schema_extra={"propertyNames": {"enum": list(LEVEL_TERMS)}, "examples": [{"source": "0.2 dB"}]},
+    )
+
+    @property
+    def level_terms(self) -> LevelTerms:
+        """The level terms as numbers."""
+        return LevelTerms.from_mapping(self.level)
 
     @property
     def terms(self) -> ResidualTerms:
@@ -88,12 +110,38 @@ class Bench(FileModel):
     edition: Literal[1]
     title: str = Field(min_length=1, max_length=120)
     rehearsal: str | None = Field(default=None, description="the simulated bench that stands in for this one")
-    instruments: dict[Literal["analyzer"], Instrument] = Field(min_length=1)
+    instruments: dict[Role, Instrument] = Field(min_length=1)
     cables: Annotated[tuple[Cable, ...], Listed] = ()
     cautions: Annotated[tuple[str, ...], Listed] = ()
     uncertainty: Uncertainty = Uncertainty()
 
+    @model_validator(mode="after")
+    def _own_ports(self) -> Bench:
+        taken: dict[int, str] = {}
+        for role, instrument in self.instruments.items():
+            for port in instrument.ports:
+                if (role == "analyzer") != (port in (1, 2)):
+                    raise trouble(
+                        f"port {port} of the {role} cannot be: the network analyzer has ports 1 and 2, "
+                        "all others have higher numbers",
+                        "instruments",
+                    )
+                if port in taken:
+                    raise trouble(f"port {port} belongs to the {taken[port]} and to the {role}", "instruments")
+                taken[port] = role
+        return self
+
     @property
     def analyzer(self) -> Instrument:
-        """The network analyzer."""
+        """The network analyzer; KeyError where there is none."""
         return self.instruments["analyzer"]
+
+    @property
+    def scalar_ports(self) -> tuple[int, int]:
+        """Port of the generator and of the spectrum analyzer: the first each declares, else 3 and 4."""
+
+        def port(role: Role, default: int) -> int:
+            instrument = self.instruments.get(role)
+            return min(instrument.ports) if instrument and instrument.ports else default
+
+        return port("generator", 3), port("spectrum analyzer", 4)

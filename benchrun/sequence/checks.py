@@ -18,7 +18,7 @@ from benchrun.sequence.files import Loaded
 from benchrun.sequence.loading import Document
 from benchrun.sequence.models import Sequence
 from benchrun.sequence.resolve import grid_of, outside, source_of, span, step_paths
-from benchrun.sequence.steps import Calibrate, Judge
+from benchrun.sequence.steps import Calibrate, DeEmbed, Judge, StepModel, Tone
 from benchrun.sequence.steps.judge import FigureLimit, MaskLimit
 
 __all__ = ["check_bench", "check_kits", "check_masks", "check_sequence", "check_serial"]
@@ -159,8 +159,15 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
                 yield document.problem(
                     f"{step.method} has no isolation to read", (*path, "isolation"), "Take `isolation` out."
                 )
+        if isinstance(step, DeEmbed) and isinstance(source_of(loaded.model, step.from_), Tone):
+            yield document.problem(
+                f"{step.from_} is a tone, which has no S-parameters to take a fixture out of", (*path, "from")
+            )
         if isinstance(step, Judge):
             source = source_of(loaded.model, step.from_)
+            yield from _domains(document, step, path, source)
+            if isinstance(source, Tone):
+                continue
             calibration = calibrations.get(getattr(source, "with_", None) or "")
             if loaded.model.unit.ports == 1:
                 has, one = "the unit", 1
@@ -170,6 +177,34 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
                 continue
             for i, limit in enumerate(step.limits):
                 yield from _one_port(document, limit, (*path, "limits", i), has, one)
+
+
+def _domains(
+    document: Document, step: Judge, path: tuple[object, ...], source: StepModel | None
+) -> Iterator[Problem]:
+    """Figures of a tone are taken from a tone, all others from a sweep."""
+    if source is None:
+        return
+    has = "tone" if isinstance(source, Tone) else "sweep"
+    for i, limit in enumerate(step.limits):
+        wants = "sweep" if isinstance(limit, MaskLimit) else limit.kind.domain
+        if wants != has:
+            yield document.problem(
+                f"{limit.text} is taken from a {wants}, but {step.from_} is a {has}",
+                (*path, "limits", i),
+                f"Judge it in a step whose `from` names a {wants}.",
+            )
+        elif (
+            isinstance(source, Tone)
+            and isinstance(limit, FigureLimit)
+            and limit.figure == "harmonic level"
+            and source.harmonics < 2
+        ):
+            yield document.problem(
+                f"{source.name} reads no harmonics",
+                (*path, "limits", i),
+                "Write `harmonics: 3` in that step.",
+            )
 
 
 def _one_port(

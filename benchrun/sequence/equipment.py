@@ -17,7 +17,7 @@ from benchrun.sequence.files import Loaded
 from benchrun.sequence.kit import KitFile
 from benchrun.sequence.models import Sequence, SweepSetup
 from benchrun.sequence.resolve import grid_of, outside, span, step_paths
-from benchrun.sequence.steps import Calibrate, Judge
+from benchrun.sequence.steps import Calibrate, Judge, Tone
 from benchrun.sequence.steps.judge import MaskLimit
 
 __all__ = ["check_bench", "check_kits", "check_masks"]
@@ -129,11 +129,66 @@ def _gap(mask: Mask, low: float, high: float) -> tuple[float, float] | None:
 
 def check_bench(loaded: Loaded[Sequence], bench: Bench) -> list[Problem]:
     """Check sweeps against the analyzer's range, and power against what unit, port and receiver withstand."""
-    problems = []
+    problems = list(_roles(loaded, bench))
+    for step, path in step_paths(loaded):
+        if isinstance(step, Tone):
+            for text, key, advice in _tone(loaded.model, step, bench):
+                problems.append(loaded.document.problem(text, (*path, key), advice))
+    if "analyzer" not in bench.instruments:
+        return problems
     for name, sweep in loaded.model.sweeps.items():
         for text, key, advice in (*_range(name, sweep, bench), *_power(loaded.model, sweep, bench)):
             problems.append(loaded.document.problem(text, ("sweeps", name, key), advice))
     return problems
+
+
+def _roles(loaded: Loaded[Sequence], bench: Bench) -> Iterator[Problem]:
+    for step, path in step_paths(loaded):
+        for role in step.roles:
+            if role not in bench.instruments:
+                yield loaded.document.problem(
+                    f"step {step.name} needs a {role}, which bench {bench.bench} does not have",
+                    path,
+                    f"It has: {', '.join(bench.instruments)}. Use another bench.",
+                )
+
+
+def _tone(sequence: Sequence, step: Tone, bench: Bench) -> Iterator[tuple[str, str, str]]:
+    levels, unit, key = step.grid_dbm(), sequence.unit, "level" if step.level is not None else "levels"
+    generator, receiver = bench.instruments.get("generator"), bench.instruments.get("spectrum analyzer")
+    top = float(levels[-1])
+    if top > unit.withstands.power:
+        yield (
+            f"{top:g} dBm is more than the unit withstands ({unit.withstands.power:g} dBm)",
+            key,
+            "Lower the level.",
+        )
+    can = generator.range if generator else None
+    if can and not can.frequency[0] <= step.at <= can.frequency[1]:
+        yield f"the generator of {bench.bench} covers only {span(*can.frequency)}", "at", "Use another bench."
+    if can and can.power and not (can.power[0] <= levels[0] and top <= can.power[1]):
+        low, high = can.power
+        yield (
+            f"the generator of {bench.bench} gives {low:g} to {high:g} dBm, not {levels[0]:g} to {top:g} dBm",
+            key,
+            "Change the level.",
+        )
+    if receiver and receiver.range and step.at * step.harmonics > receiver.range.frequency[1]:
+        yield (
+            f"harmonic {step.harmonics} lies beyond the spectrum analyzer's "
+            f"{span(*receiver.range.frequency)}",
+            "harmonics" if step.harmonics > 1 else "at",
+            "Read fewer harmonics.",
+        )
+    withstands = [port.withstands.power for port in receiver.ports.values()] if receiver else []
+    reaches = top + max(unit.gain, 0.0)
+    if withstands and reaches > min(withstands):
+        yield (
+            f"{top:g} dBm and a gain of {unit.gain:g} dB bring {reaches:g} dBm to a port that "
+            f"withstands {min(withstands):g} dBm",
+            key,
+            "Lower the level or put a pad before the port.",
+        )
 
 
 def _range(name: str, sweep: SweepSetup, bench: Bench) -> Iterator[tuple[str, str, str]]:

@@ -164,7 +164,7 @@ class Sequence(FileModel):
     unit: Unit
     cautions: Annotated[tuple[str, ...], Listed] = ()
     sweeps: dict[Name, SweepSetup] = Field(
-        min_length=1, max_length=100, json_schema_extra={"additionalProperties": False}
+        default_factory=dict, max_length=100, json_schema_extra={"additionalProperties": False}
     )
     entries: Annotated[tuple[Entry, ...], Listed] = Field(alias="steps", min_length=1, max_length=1000)
 
@@ -172,6 +172,11 @@ class Sequence(FileModel):
     def steps(self) -> tuple[StepModel, ...]:
         """The steps themselves, in order."""
         return tuple(entry.step for entry in self.entries)
+
+    @property
+    def roles(self) -> tuple[str, ...]:
+        """Instruments that the steps need, in the order of first use."""
+        return tuple(dict.fromkeys(role for step in self.steps for role in step.roles))
 
     @property
     def caution_texts(self) -> tuple[str, ...]:

@@ -6,7 +6,7 @@ from benchrun.quantity import Dimension, render
 from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.files import Loaded
 from benchrun.sequence.models import Sequence
-from benchrun.sequence.steps import StepModel
+from benchrun.sequence.steps import StepModel, Sweep
 
 __all__ = ["grid_of", "outside", "source_of", "span", "step_paths"]
 
@@ -31,7 +31,7 @@ def grid_of(sequence: Sequence, name: str) -> FloatArray | None:
     """Find the grid of a network in Hz, ``(f,)``; None where names do not resolve."""
     step = source_of(sequence, name)
     try:
-        return sequence.sweep_of(step).grid() if step is not None else None
+        return sequence.sweep_of(step).grid() if isinstance(step, Sweep) else None
     except KeyError:
         return None  # a name that does not resolve is reported elsewhere
 

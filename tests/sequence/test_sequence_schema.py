@@ -8,9 +8,10 @@ import re
 import jsonschema
 import pytest
 
+from benchrun.errors import InputError
 from benchrun.quantity import Dimension, parse
 from benchrun.sequence.fields import _schema
-from benchrun.sequence.files import KINDS, kind_of
+from benchrun.sequence.files import KINDS, kind_of, load_model
 from benchrun.sequence.loading import load
 from benchrun.sequence.schema import keys_at, schema
 
@@ -83,7 +84,20 @@ def test_rules_fit_both_schema_and_model(good, load_text, rule):
     assert jsonschema.Draft202012Validator(schema(KINDS["sequence"])).is_valid(as_editor_sees(text.encode()))
 
 
-@pytest.mark.parametrize("port", ["1", "3", "x"])
+def test_ports_belong_to_one_instrument(installed, load_text):
+    text = (installed / "benches" / "workshop.yaml").read_text()
+    with pytest.raises(InputError, match=r"port 3 of the analyzer .*has ports 1 and 2"):
+        load_model(text.replace("      2: {conn", "      3: {conn").encode(), "bench.yaml", KINDS["bench"])
+    other = text.replace(
+        "instruments:\n",
+        "instruments:\n  generator:\n    resource: GPIB0::20::INSTR\n    dialect: standard-generator\n"
+        "    ports:\n      2: {withstands: {power: 20 dBm}}\n",
+    )
+    with pytest.raises(InputError, match="port 2 of the generator"):
+        load_model(other.encode(), "bench.yaml", KINDS["bench"])
+
+
+@pytest.mark.parametrize("port", ["1", "0", "x"])
 def test_ports_of_a_bench_are_named_alike(installed, load_text, port):
     text = (
         (installed / "benches" / "workshop.yaml")

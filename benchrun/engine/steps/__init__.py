@@ -10,6 +10,7 @@ from benchrun.engine.steps.calibrate import CalibrateExecution
 from benchrun.engine.steps.deembed import DeEmbedExecution
 from benchrun.engine.steps.judge import JudgeExecution
 from benchrun.engine.steps.sweep import SweepExecution
+from benchrun.engine.steps.tone import ToneExecution
 
 __all__ = ["EXECUTIONS", "AtWork", "Execution"]
 
@@ -17,6 +18,7 @@ EXECUTIONS: Mapping[str, Execution[Any]] = {
     "calibrate": CalibrateExecution(),
     "sweep": SweepExecution(),
     "de-embed": DeEmbedExecution(),
+    "tone": ToneExecution(),
     "judge": JudgeExecution(),
 }
 """By the kind of the step, as written in a sequence."""

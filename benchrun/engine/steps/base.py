@@ -15,6 +15,8 @@ from benchrun.evaluate.procedure import Procedure
 from benchrun.evaluate.state import State
 from benchrun.hookup import Hookup
 from benchrun.instruments.analyzer import NetworkAnalyzer, SweepSettings
+from benchrun.instruments.generator import SignalGenerator
+from benchrun.instruments.spectrum import SpectrumAnalyzer
 from benchrun.sequence.steps import StepModel
 
 __all__ = ["AtWork", "Execution", "carry_out"]
@@ -30,8 +32,10 @@ class AtWork:
     ----------
     procedure, state
         The arithmetic, and what it has found for this unit.
-    analyzer, operator, clock
-        The bench.
+    analyzer, generator, spectrum
+        The instruments, as far as the sequence needs them.
+    operator, clock
+        Who connects, and the bench's time.
     kept
         Readings of this unit's record; :meth:`Kept.add` makes them safe.
     emit
@@ -42,12 +46,14 @@ class AtWork:
 
     procedure: Procedure
     state: State
-    analyzer: NetworkAnalyzer
+    analyzer: NetworkAnalyzer | None
     operator: Operator
     clock: Clock
     kept: Kept
     emit: Emitter
     standing: Hookup | None = None
+    generator: SignalGenerator | None = None
+    spectrum: SpectrumAnalyzer | None = None
 
 
 class Execution(Protocol[S]):
@@ -72,12 +78,14 @@ class Execution(Protocol[S]):
 
 def carry_out(step: StepModel, work: AtWork) -> None:
     """Read what a step needs read, then do its arithmetic: all that most kinds need."""
-    needed = hookups(step, work.procedure)
+    needed, analyzer = hookups(step, work.procedure), work.analyzer
     if needed:
+        if analyzer is None:
+            raise RuntimeError("a sweep was planned for a bench without network analyzer")
         setup = work.procedure.sequence.sweep_of(step)
         spacing = "list" if setup.at is not None else setup.spacing
         settings = SweepSettings(setup.grid(), spacing, setup.bandwidth, setup.power, setup.averages)
-        work.analyzer.set_up(settings)
+        analyzer.set_up(settings)
         for hookup in needed:
             if hookup != work.standing:
                 work.emit(Prompted(hookup=hookup.text))
@@ -85,7 +93,7 @@ def carry_out(step: StepModel, work: AtWork) -> None:
                 work.standing = hookup
             if setup.settle:
                 work.clock.wait(setup.settle)
-            raw = work.analyzer.sweep().raw
+            raw = analyzer.sweep().raw
             reading = work.kept.add(
                 Reading.of(step.name, hookup.text, settings.grid_hz, raw, work.clock.seconds())
             )

@@ -10,6 +10,7 @@ from benchrun.evaluate.steps.calibrate import CalibrateArithmetic
 from benchrun.evaluate.steps.deembed import DeEmbedArithmetic
 from benchrun.evaluate.steps.judge import JudgeArithmetic
 from benchrun.evaluate.steps.sweep import SweepArithmetic
+from benchrun.evaluate.steps.tone import ToneArithmetic
 
 __all__ = ["ARITHMETIC", "Arithmetic"]
 
@@ -17,6 +18,7 @@ ARITHMETIC: Mapping[str, Arithmetic[Any]] = {
     "calibrate": CalibrateArithmetic(),
     "sweep": SweepArithmetic(),
     "de-embed": DeEmbedArithmetic(),
+    "tone": ToneArithmetic(),
     "judge": JudgeArithmetic(),
 }
 """By the kind of the step, as written in a sequence."""

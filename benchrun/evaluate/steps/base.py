@@ -6,9 +6,9 @@ from collections.abc import Mapping
 from typing import Protocol, TypeVar
 
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.readings import Raw
 from benchrun.evaluate.state import State
 from benchrun.hookup import Hookup
-from benchrun.rf.twoport import TwoPort
 from benchrun.sequence.steps import StepModel
 
 __all__ = ["Arithmetic"]
@@ -23,7 +23,7 @@ class Arithmetic(Protocol[S]):
         """What must be connected, one reading each, in order; empty for pure arithmetic."""
         ...
 
-    def apply(self, step: S, state: State, readings: Mapping[str, TwoPort]) -> None:
+    def apply(self, step: S, state: State, readings: Mapping[str, Raw]) -> None:
         """Put the step's result into the state.
 
         Parameters
@@ -33,7 +33,7 @@ class Arithmetic(Protocol[S]):
         state
             What earlier steps left.
         readings
-            Raw readings by the text of their hook-up, planes ``(f,)``.
+            Raw readings by the text of their hook-up: planes ``(f,)``, or levels.
 
         Raises
         ------

@@ -9,9 +9,11 @@ import numpy as np
 from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.network import Data, Network
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.readings import Raw
 from benchrun.evaluate.state import State, agree
 from benchrun.hookup import Hookup
 from benchrun.rf.interpolation import resample
+from benchrun.rf.tone import Tone
 from benchrun.rf.touchstone import TouchstoneData
 from benchrun.rf.twoport import FloatArray, TwoPort
 from benchrun.sequence.steps import DeEmbed
@@ -26,7 +28,7 @@ class DeEmbedArithmetic:
         """Nothing to connect."""
         return ()
 
-    def apply(self, step: DeEmbed, state: State, readings: Mapping[str, TwoPort]) -> None:
+    def apply(self, step: DeEmbed, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave a network."""
         source = state.networks[step.from_]
 
@@ -77,6 +79,10 @@ def _without_each(data: Data, left: TwoPort | None, right: TwoPort | None) -> Da
 
 
 def _without(data: Data, left: TwoPort | None, right: TwoPort | None) -> Data:
+    if isinstance(data, Tone):  # refused when the sequence was checked
+        raise InvalidMeasurement(
+            "A tone has no S-parameters to take a fixture out of.", "Correct the sequence."
+        )
     if not isinstance(data, TwoPort):
         return data if left is None else _reflection_behind(data, left)
     rest = data if left is None else data.without_left(left)

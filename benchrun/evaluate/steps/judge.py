@@ -11,10 +11,12 @@ from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.judgement import JudgedFigure, not_told, told
 from benchrun.evaluate.network import Data, Network, combine
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.readings import Raw
 from benchrun.evaluate.state import State
 from benchrun.hookup import Hookup
 from benchrun.rf.figures.band import at, decibels
 from benchrun.rf.masks import MaskLine
+from benchrun.rf.tone import Tone
 from benchrun.rf.twoport import FloatArray, TwoPort
 from benchrun.sequence.steps import Judge
 from benchrun.sequence.steps.judge import FigureLimit, MaskLimit
@@ -30,7 +32,7 @@ class JudgeArithmetic:
         """Nothing to connect."""
         return ()
 
-    def apply(self, step: Judge, state: State, readings: Mapping[str, TwoPort]) -> None:
+    def apply(self, step: Judge, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave judged figures."""
         network, judged = state.networks[step.from_], list[JudgedFigure]()
         for limit in step.limits:
@@ -83,6 +85,8 @@ def _near(f_hz: FloatArray, limit: FigureLimit) -> slice:
 
 
 def _sliced(data: Data, near: slice) -> Data:
+    if isinstance(data, Tone):
+        return data
     return data.map(lambda plane: plane[..., near]) if isinstance(data, TwoPort) else data[..., near]
 
 

@@ -6,10 +6,12 @@ from collections.abc import Mapping
 
 from benchrun.evaluate.network import Data, Network
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import State, agree
 from benchrun.hookup import Hookup
 from benchrun.rf.calibration.one_port import own_reflection
 from benchrun.rf.terms import OnePortTerms, TwelveTerms
+from benchrun.rf.tone import Tone
 from benchrun.rf.twoport import TwoPort
 from benchrun.sequence.steps import Calibrate, Sweep
 
@@ -33,10 +35,10 @@ class SweepArithmetic:
         port = next((s.used_ports[0] for s in named), 1)
         return (procedure.unit_hookup(port),)
 
-    def apply(self, step: Sweep, state: State, readings: Mapping[str, TwoPort]) -> None:
+    def apply(self, step: Sweep, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave a network."""
         procedure = state.procedure
-        raw = readings[self.hookups(step, procedure)[0].text]
+        raw = two_ports(readings)[self.hookups(step, procedure)[0].text]
         if step.with_ is None:
             grid = procedure.sequence.sweep_of(step).grid()
             nominal: Data = raw if procedure.sequence.unit.ports == 2 else raw.s11
@@ -47,6 +49,8 @@ class SweepArithmetic:
         agree(state, step.name, nominal, calibration.examiner(raw))
         varied, systematic = None, 0
         if calibration.noise is not None:
+            assert not isinstance(nominal, Tone)  # corrected from 2x2 readings
+            assert not isinstance(calibration.noise, Tone)
             varied = residual.vary(nominal, calibration.noise)
             systematic = residual.steps if isinstance(nominal, TwoPort) else residual.one_port_steps
         state.networks[step.name] = Network(calibration.f_hz, nominal, varied, systematic, calibration.z0_ohm)

@@ -11,6 +11,7 @@ import numpy as np
 from benchrun.errors import InvalidMeasurement
 from benchrun.quantity import Dimension
 from benchrun.rf.figures.band import in_band, require_inside, samples
+from benchrun.rf.tone import Tone
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
 __all__ = ["FigureKind", "Found", "Parameter", "Trace"]
@@ -122,7 +123,7 @@ class FigureKind:
         return low - reach, high + reach
 
     def measure(
-        self, f_hz: FloatArray, network: TwoPort | ComplexArray, side: str, **parameters: Any
+        self, f_hz: FloatArray, network: TwoPort | ComplexArray | Tone, side: str, **parameters: Any
     ) -> Found:
         """Take the figure.
 
@@ -131,7 +132,7 @@ class FigureKind:
         f_hz
             ``(f,)``.
         network
-            Planes ``(f,)`` or ``(d, f)``.
+            Planes ``(f,)`` or ``(d, f)``; a tone for figures of that domain.
         side
             ``"at most"`` takes the greatest value of a band, ``"at least"`` the least.
         **parameters
@@ -150,6 +151,8 @@ class FigureKind:
             require_inside(f_hz, low, high, f"the reference of {self.name}")
         if self.scalar is not None:
             return self._sure(self.scalar(f_hz, network, **parameters))
+        if isinstance(network, Tone):
+            raise TypeError(f"{self.name} is taken from S-parameters, not from a tone")
         if parameters.get("at") is not None:
             value = self._values(f_hz, network, (parameters["at"],) * 2, parameters)[1][..., 0]
             return self._sure(Found(value, np.full(value.shape, parameters["at"])))

@@ -9,7 +9,10 @@ from benchrun.sequence.steps.calibrate import Calibrate
 from benchrun.sequence.steps.deembed import DeEmbed
 from benchrun.sequence.steps.judge import Judge
 from benchrun.sequence.steps.sweep import Sweep
+from benchrun.sequence.steps.tone import Tone
 
-__all__ = ["STEP_KINDS", "Calibrate", "DeEmbed", "Judge", "StepModel", "Sweep"]
+__all__ = ["STEP_KINDS", "Calibrate", "DeEmbed", "Judge", "StepModel", "Sweep", "Tone"]
 
-STEP_KINDS: Mapping[str, type[StepModel]] = {kind.kind: kind for kind in (Calibrate, Sweep, DeEmbed, Judge)}
+STEP_KINDS: Mapping[str, type[StepModel]] = {
+    kind.kind: kind for kind in (Calibrate, Sweep, DeEmbed, Tone, Judge)
+}

@@ -19,6 +19,8 @@ class StepModel(FileModel):
     kind: ClassVar[str]
     leaves: ClassVar[str]
     """``"calibration"``, ``"network"`` or ``"judgement"``."""
+    roles: ClassVar[tuple[str, ...]] = ()
+    """Instruments that it needs."""
     name: str
 
     def needs(self) -> dict[str, tuple[str, str]]:

@@ -17,6 +17,7 @@ class Sweep(StepModel):
 
     kind: ClassVar[str] = "sweep"
     leaves: ClassVar[str] = "network"
+    roles: ClassVar[tuple[str, ...]] = ("analyzer",)
 
     name: Name = Field(alias="as", description="name under which later steps refer to this result")
     with_: Name | None = Field(default=None, alias="with", description="a calibration; its sweep is used")
