@@ -127,7 +127,9 @@ class Bench(FileModel):
                         "instruments",
                     )
                 if port in taken:
-                    raise trouble(f"port {port} belongs to the {taken[port]} and to the {role}", "instruments")
+                    raise trouble(
+                        f"port {port} belongs to the {taken[port]} and to the {role}", "instruments"
+                    )
                 taken[port] = role
         return self
 

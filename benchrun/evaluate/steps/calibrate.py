@@ -9,6 +9,7 @@ import numpy as np
 
 from benchrun.evaluate.network import Data
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import Calibration, State, agree
 from benchrun.hookup import Hookup
 from benchrun.rf.calibration import METHODS, define
@@ -32,14 +33,15 @@ class CalibrateArithmetic:
         """The standards of the method."""
         return METHODS[step.method].required(step.used_ports, step.isolation)
 
-    def apply(self, step: Calibrate, state: State, readings: Mapping[str, TwoPort]) -> None:
+    def apply(self, step: Calibrate, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave a :class:`Calibration`."""
         procedure, method, ports = state.procedure, METHODS[step.method], step.used_ports
+        swept = two_ports(readings)
         f_hz, kit = procedure.sequence.sweeps[step.sweep].grid(), procedure.kits[step.kit]
-        terms = method.solve(ports, define(kit, method.standards, f_hz), readings, step.isolation)
-        examiner = method.examiner(f_hz, ports, kit, readings, step.isolation)
+        terms = method.solve(ports, define(kit, method.standards, f_hz), swept, step.isolation)
+        examiner = method.examiner(f_hz, ports, kit, swept, step.isolation)
         for hookup in self.hookups(step, procedure)[-1:]:  # the last one joins the ports, or is the load
-            raw = readings[hookup.text]
+            raw = swept[hookup.text]
             agree(state, step.name, _correct(terms, raw, ports), examiner(raw))
         _keep_heap()
         noise = _noise(len(ports), len(f_hz), procedure.noise_seed) if procedure.residual.declared else None

@@ -17,6 +17,7 @@ class Calibrate(StepModel):
 
     kind: ClassVar[str] = "calibrate"
     leaves: ClassVar[str] = "calibration"
+    roles: ClassVar[tuple[str, ...]] = ("analyzer",)
 
     name: Name = Field(alias="as", description="name under which sweeps refer to this calibration")
     sweep: Name = Field(description="one of the sequence's sweeps")
