@@ -22,12 +22,20 @@ __all__ = ["command"]
 @click.option(
     "--seed", type=click.IntRange(0, 2**63 - 1), default=1, show_default=True, help="Seed of the simulation."
 )
+@click.option(
+    "--fault",
+    "faults",
+    multiple=True,
+    metavar="NAME[@N]",
+    help="Let something go wrong, after N occasions; a wrong name lists them all.",
+)
 @common
 def command(
     sequence: str,
     bench: str,
     units: tuple[str, ...],
     seed: int,
+    faults: tuple[str, ...],
     operator: str | None,
     records: Path,
     as_json: bool,
@@ -49,7 +57,7 @@ def command(
     from benchrun.record.keys import KeyStore
 
     plan = make_plan(sequence, bench, datetime.date.today())
-    rehearsal, store = prepare_rehearsal(plan.bench, seed), KeyStore()
+    rehearsal, store = prepare_rehearsal(plan.bench, seed, faults), KeyStore()
     return report_run(
         lambda sink: Job(
             plan=plan,

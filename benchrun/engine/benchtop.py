@@ -125,6 +125,18 @@ class Benchtop:
         every = (self.generator, self.analyzer, self.spectrum)
         return tuple(instrument for instrument in every if instrument is not None)
 
+    def confirm(self) -> None:
+        """Ask once more who is there: another instrument voids what was read.
+
+        Raises
+        ------
+        IdentityError, TransportError, ReplyError
+        """
+        for found in self.found:
+            again = self._sessions[found.role].identity()
+            if again != found.identity:
+                raise IdentityError(found.identity.text, again.text, resource=found.resource)
+
     @property
     def ours(self) -> bool:
         """Whether anything was recognised as ours, and may have been set."""

@@ -5,7 +5,9 @@ The only place where the product meets :mod:`sim_instruments`.
 
 from __future__ import annotations
 
+import difflib
 import re
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -17,6 +19,7 @@ from benchrun.sequence.files import Loaded
 from benchrun.sequence.models import Sequence
 from sim_instruments.bench import BadBench, SimulatedBench, load_bench
 from sim_instruments.doors.visa import simulated_visa
+from sim_instruments.faults import FAULTS, inject
 from sim_instruments.world import NoSuchItem, World
 
 __all__ = ["Rehearsal", "SimulatedHands", "prepare_rehearsal"]
@@ -81,7 +84,7 @@ class Rehearsal:
         )
 
 
-def prepare_rehearsal(bench: Loaded[Bench], seed: int) -> Rehearsal:
+def prepare_rehearsal(bench: Loaded[Bench], seed: int, faults: Iterable[str] = ()) -> Rehearsal:
     """The simulated bench that stands in for a real one.
 
     Parameters
@@ -90,6 +93,8 @@ def prepare_rehearsal(bench: Loaded[Bench], seed: int) -> Rehearsal:
         The bench file; its ``rehearsal`` names the simulated bench.
     seed
         Of everything random in it.
+    faults
+        What goes wrong, by name; ``"NAME@N"`` lets N occasions pass before it.
 
     Raises
     ------
@@ -109,6 +114,22 @@ def prepare_rehearsal(bench: Loaded[Bench], seed: int) -> Rehearsal:
         simulated = load_bench(name, seed)
     except BadBench as error:
         raise InputError(bench.document.problem(str(error), ("rehearsal",))) from error
+    for fault in faults:
+        simulated = _with_fault(simulated, fault, seed)
     world = simulated.world
     clock = FunctionClock(lambda: world.time_s, world.advance)
     return Rehearsal(simulated, simulated_visa(world, simulated.instruments), clock, SimulatedHands(world))
+
+
+def _with_fault(bench: SimulatedBench, fault: str, seed: int) -> SimulatedBench:
+    name, _, after = fault.partition("@")
+    name = name.strip()
+    if name not in FAULTS:
+        close = difflib.get_close_matches(name, FAULTS, 1, 0.5)
+        hint = f"did you mean {close[0]!r}?" if close else f"known are {', '.join(FAULTS)}"
+        raise InputError(f"there is no fault {name!r}; {hint}")
+    if after and not after.strip().isdecimal():
+        raise InputError(
+            f"fault {fault!r}: {after!r} is no number of occasions; write it as in 'open for short@2'"
+        )
+    return inject(bench, name, after=int(after or 0), seed=seed)

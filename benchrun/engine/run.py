@@ -246,6 +246,7 @@ class _UnitRun:
             with self.stop.armed():
                 self._begin()
                 self._steps()
+                self.top.confirm()
             return Ending(self.state.conclusion)
         except Stopped as stopped:
             return Ending(Conclusion.STOPPED, stopped.reason)

@@ -73,9 +73,9 @@ class Standard:
     Parameters
     ----------
     kind
-        ``"open"``, ``"short"``, ``"load"`` or ``"thru"``.
+        ``"open"``, ``"short"``, ``"load"``, ``"thru"`` or ``"line"``.
     offset
-        Line in front of the termination, or the thru itself.
+        Line in front of the termination, or the thru or line itself.
     capacitance
         ``C0, C1, C2, C3`` in F, F/Hz, F/Hz^2, F/Hz^3 (open).
     inductance
@@ -101,6 +101,11 @@ class Standard:
     resistance_ohm: float = 50.0
     series_inductance_h: float = 0.0
     uncertainty: Mapping[str, float] = field(default_factory=dict)
+
+    @property
+    def joins(self) -> bool:
+        """Whether it stands between two ports."""
+        return self.kind in ("thru", "line")
 
     def reflection(
         self, f_hz: FloatArray, zr_ohm: float = 50.0, deltas: Mapping[str, float | FloatArray] | None = None
@@ -155,7 +160,7 @@ class Standard:
     def two_port(
         self, f_hz: FloatArray, zr_ohm: float = 50.0, deltas: Mapping[str, float | FloatArray] | None = None
     ) -> TwoPort:
-        """S-parameters of a thru: a line of ``offset``, in a system of ``zr_ohm``.
+        """S-parameters of a thru or line: a line of ``offset``, in a system of ``zr_ohm``.
 
         Source: a line of impedance :math:`Z_c` between two reference planes, any network text, for
         example Pozar, Microwave Engineering, table 4.2 (from memory).

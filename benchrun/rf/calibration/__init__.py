@@ -4,54 +4,35 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
-from benchrun.rf.calibration.method import Definitions, Method
+from benchrun.rf.calibration.definitions import define
+from benchrun.rf.calibration.lrm import LineReflectMatch
+from benchrun.rf.calibration.lrrm import LineReflectReflectMatch
+from benchrun.rf.calibration.method import Method
+from benchrun.rf.calibration.multiline import MultilineThruReflectLine
+from benchrun.rf.calibration.one_path import OnePath
 from benchrun.rf.calibration.one_port import ShortOpenLoad
+from benchrun.rf.calibration.response import Response
+from benchrun.rf.calibration.solr import ShortOpenLoadReciprocal
 from benchrun.rf.calibration.solt import ShortOpenLoadThru
-from benchrun.rf.kit import Kit
-from benchrun.rf.twoport import FloatArray, TwoPort
+from benchrun.rf.calibration.trl import ThruReflectLine
+from benchrun.rf.twoport import TwoPort
 
 __all__ = ["METHODS", "define", "differ"]
 
-METHODS: Mapping[str, Method] = {method.name: method for method in (ShortOpenLoad(), ShortOpenLoadThru())}
+_ALL: tuple[Method, ...] = (
+    Response(),
+    ShortOpenLoad(),
+    OnePath(),
+    ShortOpenLoadThru(),
+    ShortOpenLoadReciprocal(),
+    ThruReflectLine(),
+    MultilineThruReflectLine(),
+    LineReflectMatch(),
+    LineReflectReflectMatch(),
+)
 
-
-def define(
-    kit: Kit,
-    names: tuple[str, ...],
-    f_hz: FloatArray,
-    deltas: Mapping[str, Mapping[str, float | FloatArray]] | None = None,
-) -> Definitions:
-    """Evaluate what the kit says its standards are, on this grid.
-
-    Parameters
-    ----------
-    kit
-        The kit.
-    names
-        Standards wanted.
-    f_hz
-        Frequencies in Hz, ``(f,)``.
-    deltas
-        Departures per standard and parameter, scalar or ``(d, 1)``.
-
-    Returns
-    -------
-    dict
-        One plane per one-port standard, one :class:`TwoPort` per thru.
-
-    Raises
-    ------
-    KeyError
-        If the kit lacks a standard.
-    """
-    found: dict[str, object] = {}
-    for name in names:
-        standard, moved = kit.standards[name], (deltas or {}).get(name)
-        if standard.kind == "thru":
-            found[name] = standard.two_port(f_hz, kit.z0_ohm, moved)
-        else:
-            found[name] = standard.reflection(f_hz, kit.z0_ohm, moved)
-    return found  # type: ignore[return-value]  # filled with planes and two-ports only
+METHODS: Mapping[str, Method] = {method.name: method for method in _ALL}
+"""By the word that a sequence writes."""
 
 
 def differ(a: object, b: object) -> float:

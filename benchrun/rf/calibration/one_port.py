@@ -9,7 +9,7 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.hookup import Hookup
-from benchrun.rf.calibration.method import Definitions, Examiner, Readings
+from benchrun.rf.calibration.method import PLAIN, Definitions, Examiner, Options, Readings
 from benchrun.rf.kit import Kit
 from benchrun.rf.terms import OnePortTerms
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
@@ -69,13 +69,26 @@ class ShortOpenLoad:
 
     name: ClassVar[str] = "SOL"
     standards: ClassVar[tuple[str, ...]] = REFLECTIONS
+    two_port: ClassVar[bool] = False
+    without_switch_terms: ClassVar[str] = ""
 
-    def required(self, ports: tuple[int, ...], isolation: bool = False) -> tuple[Hookup, ...]:
+    def takes(self, options: Options = PLAIN) -> tuple[str, ...]:
+        """Short, open and load."""
+        return self.standards
+
+    def required(
+        self, ports: tuple[int, ...], isolation: bool = False, options: Options = PLAIN
+    ) -> tuple[Hookup, ...]:
         """Three hook-ups."""
         return tuple(Hookup.of(name, ports[0]) for name in REFLECTIONS)
 
     def solve(
-        self, ports: tuple[int, ...], definitions: Definitions, readings: Readings, isolation: bool = False
+        self,
+        ports: tuple[int, ...],
+        definitions: Definitions,
+        readings: Readings,
+        isolation: bool = False,
+        options: Options = PLAIN,
     ) -> OnePortTerms:
         """Three terms of the one port."""
         port = ports[0]
@@ -89,6 +102,7 @@ class ShortOpenLoad:
         kit: Kit,
         readings: Readings,
         isolation: bool = False,
+        options: Options = PLAIN,
     ) -> Examiner:
         """By scikit-rf's ``OnePort``."""
         import skrf

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
-from benchrun.rf.figures import crossing, flat, impedance, level, linear, matrix, phase, shape, tone
+from benchrun.rf.figures import along, crossing, flat, impedance, level, linear, matrix, phase, shape, tone
 from benchrun.rf.figures.kind import FigureKind, Found, Parameter
 
 __all__ = ["FIGURES", "FigureKind", "Found", "Parameter"]
@@ -20,6 +20,7 @@ FIGURES: Mapping[str, FigureKind] = {
         *phase.KINDS,
         *linear.KINDS,
         *matrix.KINDS,
+        *along.KINDS,
         *tone.KINDS,
     )
 }
