@@ -204,4 +204,7 @@ def test_draws_of_definitions_give_draws_of_devices(random_terms, random_device)
 
 def test_every_method_names_itself() -> None:
     """The table is keyed by the word that a sequence writes."""
-    assert {name: method.name for name, method in METHODS.items()} == {"SOL": "SOL", "SOLT": "SOLT"}
+    assert {name: method.name for name, method in METHODS.items()} == {name: name for name in METHODS}
+    assert list(METHODS) == [
+        "response", "SOL", "one-path", "SOLT", "SOLR", "TRL", "multiline TRL", "LRM", "LRRM",
+    ]  # fmt: skip
