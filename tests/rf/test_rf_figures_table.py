@@ -22,11 +22,15 @@ CHECKED = {
     "flatness", "slope", "flatness about the slope", "phase linearity", "electrical length",
     "group delay slope", "group delay parabola", "group delay ripple",
     "isolation", "directivity", "port balance", "passivity",
+    "distance to fault", "return loss of the fault", "impedance at distance",
 }  # fmt: skip
 """Each of these has a closed-form check in the files beside this one."""
 
-NEEDED = {"drop": 10.0, "outer": 12.0}
+NEEDED = {"drop": 10.0, "outer": 12.0, "velocity": 0.7, "distance": 0.5}
 """What a limit must say, where the figure has no default for it."""
+
+ON_ANY_SWEEP = [name for name in NAMES if name != "impedance at distance"]
+"""All but the one that needs a sweep from its step upwards; its like tests are in test_rf_fig_along.py."""
 
 
 def bandpass(rows: int = 0) -> TwoPort:
@@ -79,7 +83,7 @@ def test_the_sense_says_which_figures_are_one_magnitude_in_decibels(name: str) -
     np.testing.assert_allclose(half - full, -kind.sense * 20 * np.log10(2), rtol=1e-9)
 
 
-@pytest.mark.parametrize("name", NAMES)
+@pytest.mark.parametrize("name", ON_ANY_SWEEP)
 @pytest.mark.parametrize("side", ["at most", "at least"])
 def test_each_draw_is_measured_as_if_it_stood_alone(name: str, side: str) -> None:
     """(d, f) gives (d,), bit for bit what each row gives."""
@@ -93,7 +97,7 @@ def test_each_draw_is_measured_as_if_it_stood_alone(name: str, side: str) -> Non
         assert_array_equal(found.at_hz[row], alone.at_hz)
 
 
-@pytest.mark.parametrize("name", [n for n in NAMES if FIGURES[n].ports == 1])
+@pytest.mark.parametrize("name", [n for n in ON_ANY_SWEEP if FIGURES[n].ports == 1])
 def test_a_reflection_figure_needs_one_port_only(name: str) -> None:
     two = bandpass()
     alone = FIGURES[name].measure(F_HZ, two.s11, "at most", **complete(name))

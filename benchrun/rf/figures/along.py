@@ -71,16 +71,16 @@ def _impedance(
     cell = velocity * LIGHT / (4.0 * samples.step_hz * samples.plane.shape[-1])
     if distance < cell:
         raise InvalidMeasurement(
-            f"the impedance is asked for at {render(distance, Dimension.LENGTH)}, but the sweep resolves only "
-            f"{render(cell, Dimension.LENGTH)} of this line.",
+            f"the impedance is asked for at {render(distance, Dimension.LENGTH)}, but the sweep resolves "
+            f"only {render(cell, Dimension.LENGTH)} of this line.",
             "Sweep to a higher frequency, or look farther along.",
         )
     return _found(f_hz, impedance_at(f_hz, plane, 2.0 * distance / (velocity * LIGHT), reference))
 
 
 _PEAK = (
-    "the greatest peak of the band-pass impulse response of S11 (Kaiser window) `within` a stretch of line, or "
-    "up to where the sweep repeats; it must stand out of the whole response's median six times"
+    "the greatest peak of the band-pass impulse response of S11 (Kaiser window) `within` a stretch of line, "
+    "or up to where the sweep repeats; it must stand out of the whole response's median six times"
 )
 
 KINDS = (
