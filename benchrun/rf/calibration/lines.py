@@ -31,6 +31,9 @@ _LIGHT_M_PER_S = 299_792_458.0
 WINDOW_DEG = (20.0, 160.0)
 """How much longer than the thru a line must be, modulo 180 degrees; common practice."""
 
+_ROUNDING_DEG = 0.01
+"""A line made for the very edge of the window is not to fail by the last digit."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class LineReport:
@@ -58,7 +61,8 @@ class LineReport:
     @property
     def within(self) -> NDArray[np.bool_]:
         """Where the chosen line lies inside of :data:`WINDOW_DEG`, ``(f,)``."""
-        return np.asarray((self.best_deg >= WINDOW_DEG[0]) & (self.best_deg <= WINDOW_DEG[1]))
+        low, high = WINDOW_DEG[0] - _ROUNDING_DEG, WINDOW_DEG[1] + _ROUNDING_DEG
+        return np.asarray((self.best_deg >= low) & (self.best_deg <= high))
 
     @property
     def magnification(self) -> FloatArray:
