@@ -13,8 +13,10 @@ import yaml
 
 from sim_instruments.draws import Draws
 from sim_instruments.instruments.analyzer import Analyzer
+from sim_instruments.instruments.kinds import KINDS
 from sim_instruments.instruments.receivers import Receivers, WorldReadings
 from sim_instruments.instruments.recorded import Recorded
+from sim_instruments.instruments.routing import WiredWorld
 from sim_instruments.parts import Part, build
 from sim_instruments.scpi.instrument import Instrument
 from sim_instruments.values import number
@@ -132,7 +134,7 @@ def _build(spec: Any, seed: int, folder: Path) -> SimulatedBench:
         raise NoSuchItem(f"the simulated bench has no unit {serial!r}; it has {', '.join(known) or 'none'}")
 
     with _at("room"):
-        world = World(
+        world = WiredWorld(
             seed, items, unit, number(spec.get("temperature", 23.0)),
             drift_k_h=number(spec.get("drift", 0.0)), torque_wrench=bool(spec.get("torque wrench", True)),
             humidity=number(spec.get("humidity", 0.45)),
@@ -178,7 +180,7 @@ def _placed(spec: Mapping[str, Any], folder: Path) -> dict[str, Any]:
 
 
 def _instrument(
-    world: World, resource: str, spec: Mapping[str, Any], draws: Draws, folder: Path
+    world: WiredWorld, resource: str, spec: Mapping[str, Any], draws: Draws, folder: Path
 ) -> Instrument:
     kind = spec["kind"]
     model, serial = str(spec.get("model", "NA-2")), str(spec.get("serial", "0001"))
@@ -191,4 +193,6 @@ def _instrument(
     if kind == "recorded readings":
         files = {str(what): folder / str(file) for what, file in spec["readings"].items()}
         return Analyzer(world, Recorded(world, files), ("RECORDED", model, serial, "1.0"))
+    if kind in KINDS:
+        return KINDS[kind](world, ("SIMULATED", model, serial, "1.0"), spec, draws / "instrument" / resource)
     raise BadBench(f"instrument {resource!r}: there is no instrument of kind {kind!r}")
