@@ -99,6 +99,9 @@ def told(
         None where none is declared.
     """
     towards, away = (up, down) if side == "at most" else (down, up)
+    margin = limit - value if side == "at most" else value - limit
+    if margin < 0 and towards is not None and away is not None and math.isfinite(towards + away):
+        towards, away = away, towards  # from outside, the limit lies the other way
     if towards is None or away is None or math.isfinite(towards):
         verdict = conclude(value, limit, side, towards, rule)
         remark = "no uncertainty is declared" if towards is None and rule.factor else ""
@@ -116,7 +119,6 @@ def told(
             risk=verdict.risk,
             remark=remark,
         )
-    margin = limit - value if side == "at most" else value - limit
     # The uncertainty reaches zero magnitude. Only a value that stays outside the limit on its resolvable
     # side too is shown not to conform; anything else proves nothing.
     outside = margin < 0 and math.isfinite(away) and -margin > away * max(rule.factor, 1.0)

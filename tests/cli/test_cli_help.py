@@ -24,7 +24,7 @@ COMMANDS = {
     ("keys", "list"): (),
     ("keys", "distrust"): ("KEY_ID",),
     ("keys", "export"): ("NAME",),
-    ("rehearse",): ("SEQUENCE", "--bench", "--unit", "--seed", "--operator", "--records", "--json", "--unattended"),
+    ("rehearse",): ("SEQUENCE", "--bench", "--unit", "--seed", "--fault", "--operator", "--records", "--json", "--unattended"),
     ("run",): ("SEQUENCE", "--bench", "--unit", "--key", "--operator", "--records", "--json", "--unattended"),
     ("sequences",): (),
 }  # fmt: skip
