@@ -7,7 +7,7 @@ is at the other end.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import replace
 from typing import Protocol
 
@@ -122,12 +122,20 @@ class WiredWorld(World):
             (link, [self.part(item) for item in link.items], self._joints.get(link, []))
             for link in self.links
         ]
-        busy = {port for link in self.links for port in link.ports}
         for switch in self.switches:
-            for link, parts in switch.closed():
-                if not busy & set(link.ports):
-                    rows.append((link, parts, []))
+            rows += [(link, parts, []) for link, parts in switch.closed() if self._is_cabled(link)]
         return rows
+
+    def _is_cabled(self, link: Link) -> bool:
+        """Whether no hand has taken a switch's cables off the ports of this link."""
+        return not {port for other in self.links for port in other.ports} & set(link.ports)
+
+    def _leaks(self) -> Iterator[tuple[Routes, Link, list[Part]]]:
+        """Links that stand open but let a little through."""
+        for switch in self.switches:
+            for link, parts in switch.opened():
+                if self._is_cabled(link):
+                    yield switch, link, parts
 
     # -- what that does ----------------------------------------------------------------------------------
 
@@ -178,15 +186,14 @@ class WiredWorld(World):
 
     def _with_leaks(self, f_hz: Real, m: Matrix, ports: tuple[int, int]) -> Matrix:
         """Open contacts let a little through."""
-        for switch in self.switches:
-            for link, parts in switch.opened():
-                if set(link.ports) != set(ports):
-                    continue
-                whole = between(f_hz, [((1, 2), parts, [])], self.surroundings())
-                whole = whole if link.ports == ports else flip(whole)
-                m, share = m.copy(), switch.leak(f_hz)
-                m[:, 1, 0] += share * whole[:, 1, 0]
-                m[:, 0, 1] += share * whole[:, 0, 1]
+        for switch, link, parts in self._leaks():
+            if set(link.ports) != set(ports):
+                continue
+            whole = between(f_hz, [((1, 2), parts, [])], self.surroundings())
+            whole = whole if link.ports == ports else flip(whole)
+            m, share = m.copy(), switch.leak(f_hz)
+            m[:, 1, 0] += share * whole[:, 1, 0]
+            m[:, 0, 1] += share * whole[:, 0, 1]
         return m
 
     def path(self, from_port: int, to_port: int, f_hz: Real) -> Matrix | None:
@@ -204,11 +211,10 @@ class WiredWorld(World):
                 for link, parts, joints in self._rows()
                 if len(link.ports) == 2 and port in link.ports
             ]
-            for switch in self.switches:
-                for link, parts in switch.opened():
-                    if port in link.ports:
-                        whole = self._sent(port, link, parts, [])
-                        came.append(replace(whole, wave=whole.wave * switch.leak(whole.f_hz), noise=_quiet))
+            for switch, link, parts in self._leaks():
+                if port in link.ports:
+                    whole = self._sent(port, link, parts, [])
+                    came.append(replace(whole, wave=whole.wave * switch.leak(whole.f_hz), noise=_quiet))
             return together(came)
 
     def _sent(self, port: int, link: Link, parts: list[Part], joints: list[Joint]) -> Signal:
