@@ -227,8 +227,8 @@ class IdentityError(_Exchange):
 
     def __init__(self, expected: str, found: str, *, resource: str = "") -> None:
         super().__init__(
-            f"is {found!r}, but {expected!r} is expected; connect the right instrument or correct the bench "
-            "file",
+            f"is {found!r}, but the bench file expects {expected!r}; connect the right instrument or "
+            "correct the bench file",
             resource=resource,
         )
         self.expected = expected

@@ -128,7 +128,7 @@ class Patient:
 
 def _main(arguments: list[str] | None) -> int:
     try:
-        result = program.main(args=arguments, standalone_mode=False)
+        result = program.main(args=arguments, prog_name="benchrun", standalone_mode=False)
         sys.stdout.flush()
         return int(result or 0)
     except click.exceptions.Abort:

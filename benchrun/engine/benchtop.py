@@ -8,7 +8,7 @@ from types import TracebackType
 from typing import Any
 
 from benchrun.clock import Clock
-from benchrun.errors import IdentityError, InstrumentError
+from benchrun.errors import IdentityError, InstrumentError, InvalidMeasurement
 from benchrun.instruments.analyzer import NetworkAnalyzer
 from benchrun.instruments.dialect import Dialect
 from benchrun.instruments.generator import SignalGenerator
@@ -130,12 +130,17 @@ class Benchtop:
 
         Raises
         ------
-        IdentityError, TransportError, ReplyError
+        InvalidMeasurement
+            If one is another than at the start.
+        TransportError, ReplyError
         """
         for found in self.found:
             again = self._sessions[found.role].identity()
             if again != found.identity:
-                raise IdentityError(found.identity.text, again.text, resource=found.resource)
+                raise InvalidMeasurement(
+                    f"{found.resource} was {found.identity.text!r} at the start and is {again.text!r} now.",
+                    "Find out who changed or restarted it, then run again.",
+                )
 
     @property
     def ours(self) -> bool:

@@ -36,7 +36,7 @@ class SimulatedHands:
         for hookup in hookups:
             for connection in hookup.connections:
                 for item in connection.items:
-                    if item != "unit" and item not in self._world.items:
+                    if item.removesuffix(" turned round") not in ("unit", *self._world.items):
                         have = ", ".join(sorted(self._world.items)) or "nothing"
                         raise InputError(
                             f"the simulated bench has no {item!r} to connect {hookup.text}; it has {have}"

@@ -48,9 +48,14 @@ class Procedure:
     level: LevelTerms = LevelTerms()
     scalar_ports: tuple[int, int] = (3, 4)
 
-    def unit_hookup(self, port: int) -> Hookup:
-        """How the unit is connected: in its fixture, between the ports or on ``port`` alone."""
+    def unit_hookup(self, port: int, turned: bool = False) -> Hookup:
+        """How the unit is connected: in its fixture, between the ports or on ``port`` alone.
+
+        Turned round, everything between the ports is: the whole chain is read from its other side.
+        """
         unit = self.sequence.unit
         left, right = (unit.fixture.left, unit.fixture.right) if unit.fixture else (None, None)
         chain = tuple(item for item in (left, "unit", right if unit.ports == 2 else None) if item)
+        if turned:
+            chain = tuple(f"{item} turned round" for item in reversed(chain))
         return Hookup((Connection(chain, (1, 2) if unit.ports == 2 else (port,)),))

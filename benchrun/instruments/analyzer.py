@@ -149,6 +149,28 @@ class NetworkAnalyzer:
         self._last = raw
         return Readings(grid, raw)
 
+    def switch_terms(self) -> TwoPort | None:
+        """What the idle port reflected in the last sweep; None where the dialect has no words for it.
+
+        Returns
+        -------
+        TwoPort
+            ``s21`` holds a2/b2 with port 1 driven, ``s12`` a1/b1 with port 2 driven, ``(f,)``; the rest is 0.
+
+        Raises
+        ------
+        InstrumentError, TransportError, ReplyError
+        """
+        words, settings = self.dialect.read, self._settings
+        if words.switch is None or settings is None:
+            return None
+        count = len(settings.grid_hz)
+        values = self.session.query_values(words.switch, words.form, 4 * count).reshape(count, 2, 2)
+        self.session.raise_errors(words.switch)
+        zero = np.zeros(count, np.complex128)
+        forward, reverse = (values[:, i, 0] + 1j * values[:, i, 1] for i in (0, 1))
+        return TwoPort(zero, np.ascontiguousarray(reverse), np.ascontiguousarray(forward), zero)
+
     def _trigger(self, settings: SweepSettings) -> None:
         words = self.dialect.trigger
         message = compound(*words.start)

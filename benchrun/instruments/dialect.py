@@ -90,6 +90,10 @@ class ReadWords(FileModel):
         min_length=4, max_length=4
     )
     grid: Words | None = None
+    switch: Words | None = Field(
+        default=None,
+        description="query for what the idle port reflected in the last sweep: a2/b2, then a1/b1",
+    )
 
     @model_validator(mode="after")
     def _each_once(self) -> ReadWords:

@@ -120,8 +120,9 @@ def audit(folder: Path, store: KeyStore, recompute: Recompute) -> Audit:
         again = recompute(record)
     except RecordError:
         raise
-    except BenchError as error:
-        raise CouldNotCheck(f"{folder}: the result could not be recomputed: {error}") from error
+    except Exception as error:  # whatever it is, it is no verdict, and must not stop the audit of others
+        said = str(error) if isinstance(error, BenchError) else f"{type(error).__name__}: {error}"
+        raise CouldNotCheck(f"{folder}: the result could not be recomputed: {said}") from error
     if differences := compare(record, again):
         raise ResultWrong(folder, differences)
     return Audit(record, _findings(verified, again))

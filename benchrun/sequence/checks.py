@@ -148,14 +148,15 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
     calibrations = {s.name: s for s in loaded.model.steps if isinstance(s, Calibrate)}
     for step, path in step_paths(loaded):
         if isinstance(step, Calibrate):
-            wanted = 2 if step.method == "SOLT" else 1
+            wanted = 2 if step.how.two_port else 1
             if len(step.used_ports) != wanted or len(set(step.used_ports)) != wanted:
                 yield document.problem(
                     f"{step.method} calibrates {wanted} port(s), but `ports` names {list(step.used_ports)}",
                     (*path, "ports"),
                     f"Write {'[1, 2]' if wanted == 2 else '[1] or [2]'}.",
                 )
-            if step.isolation and step.method != "SOLT":
+            yield from _options(document, step, path)
+            if step.isolation and not step.how.two_port:
                 yield document.problem(
                     f"{step.method} has no isolation to read", (*path, "isolation"), "Take `isolation` out."
                 )
@@ -171,12 +172,22 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
             calibration = calibrations.get(getattr(source, "with_", None) or "")
             if loaded.model.unit.ports == 1:
                 has, one = "the unit", 1
-            elif calibration is not None and calibration.method == "SOL" and calibration.used_ports:
+            elif calibration is not None and not calibration.how.two_port and calibration.used_ports:
                 has, one = f"the calibration {calibration.name}", calibration.used_ports[0]
             else:
                 continue
             for i, limit in enumerate(step.limits):
                 yield from _one_port(document, limit, (*path, "limits", i), has, one)
+
+
+def _options(document: Document, step: Calibrate, path: tuple[object, ...]) -> Iterator[Problem]:
+    """Options that the method does not know are a misunderstanding, not a detail."""
+    lines = ("lines", "reflect", "beyond window")
+    known: dict[str, tuple[str, ...]] = {"TRL": lines, "multiline TRL": lines, "LRM": ("reflect",)}
+    for key, given in (("lines", step.lines != ("line",)), ("reflect", step.reflect != "short"),
+                       ("beyond window", step.beyond_window)):  # fmt: skip
+        if given and key not in known.get(step.method, ()):
+            yield document.problem(f"`{key}` means nothing for {step.method}", (*path, key), "Take it out.")
 
 
 def _domains(

@@ -9,7 +9,6 @@ import numpy as np
 
 from benchrun.errors import Problem
 from benchrun.quantity import Dimension, render
-from benchrun.rf.calibration import METHODS
 from benchrun.rf.masks import Mask
 from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.bench import Bench
@@ -52,7 +51,7 @@ def check_kits(
                     "Use another kit or narrow the sweep.",
                 )
             )
-        lacking = [n for n in METHODS[step.method].standards if n not in kit.standards]
+        lacking = [n for n in step.how.takes(step.options) if n not in kit.standards]
         if lacking:
             said.append((f"kit {kit.kit} lacks {', '.join(lacking)} for {step.method}", "Use another kit."))
         if kit.due and kit.due < today:

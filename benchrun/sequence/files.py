@@ -166,9 +166,9 @@ def _problem(document: Document, model: type[BaseModel], detail: ErrorDetails) -
     if key == "[key]":
         return _bad_key(document, path, value, context)
     if kind == "literal_error" and isinstance(value, str):
-        close = difflib.get_close_matches(
-            value, re.findall(r"'([^']+)'", str(context.get("expected"))), 1, 0.5
-        )
+        allowed = re.findall(r"'([^']+)'", str(context.get("expected")))
+        alike = [word for word in allowed if word.lower() == value.lower()]
+        close = alike or difflib.get_close_matches(value, allowed, 1, 0.5)
         if close:
             return document.problem(
                 f"{key}: {_short(value)} is not known", path, f"Did you mean {close[0]!r}?"

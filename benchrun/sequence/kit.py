@@ -72,7 +72,7 @@ class Doubt(FileModel):
 class StandardFile(FileModel):
     """One standard."""
 
-    kind: Literal["open", "short", "load", "thru"]
+    kind: Literal["open", "short", "load", "thru", "line"]
     offset: OffsetFile = OffsetFile()
     capacitance: CapacitanceFile | None = None
     inductance: InductanceFile | None = None
@@ -114,7 +114,7 @@ class KitFile(FileModel):
     impedance: Impedance = 50.0
     frequency: FrequencyRange
     due: Annotated[datetime.date, BeforeValidator(_date)] | None = None
-    standards: dict[Literal["short", "open", "load", "thru"], StandardFile] = Field(min_length=1)
+    standards: dict[Name, StandardFile] = Field(min_length=1)
 
     def build(self) -> Kit:
         """As numbers."""

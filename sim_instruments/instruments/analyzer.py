@@ -41,6 +41,16 @@ class Readings(Protocol):
         """
         ...
 
+    def switch_terms(self, f_hz: Real) -> Matrix:
+        """What the idle port reflects, with port 1 and with port 2 driven, ``(f, 2)``.
+
+        Raises
+        ------
+        ScpiError
+            -241 where nothing reads it.
+        """
+        ...
+
 
 class Analyzer(Instrument):
     """The instrument.
@@ -231,6 +241,17 @@ class Analyzer(Instrument):
         into = self.power + 20 * np.log10(np.max(np.abs(m)) + 1e-30)
         self.status.questionable.put(_OVERLOADED, bool(self.output and into > _OVERLOAD_DBM))
         self._result = f_hz, m
+
+    def switch_terms(self) -> Matrix:
+        """Waves of the idle port, ``a2/b2`` and ``a1/b1``, as read in the last sweep, ``(f, 2)``.
+
+        Raises
+        ------
+        ScpiError
+            -230 if there is no sweep, -241 where nothing reads them.
+        """
+        grid, _ = self.measured()
+        return self.readings.switch_terms(grid)
 
     def measured(self) -> tuple[Real, Matrix]:
         """Grid and raw readings ``(f, 2, 2)`` of the last sweep.

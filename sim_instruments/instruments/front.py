@@ -30,6 +30,7 @@ if TYPE_CHECKING:
 __all__ = ["add_commands"]
 
 Parameters = tuple[str, ...]
+_TRACES = ("GRID", "MATRIX", "SWITCH")
 _PLANES = ((0, 0), (1, 0), (0, 1), (1, 1))
 
 
@@ -169,7 +170,7 @@ class _Front:
     def add_reading(self) -> None:
         a, add = self.analyzer, self.add
         add("TRACe[:DATA]", Command(get=self._trace, asks_least=1, asks_most=1, measures=True))
-        add("TRACe:CATalog", Command(get=lambda _: '"GRID","MATRIX"'))
+        add("TRACe:CATalog", Command(get=lambda _: ",".join(f'"{name}"' for name in _TRACES)))
         add("TRACe:POINts", Command(get=self._trace_points, asks_least=1, asks_most=1, measures=True))
         add("CALCulate:FEED", Command(
             self._set_feed, lambda _: f'"XFRequency:RATio {a.feed[0]},{a.feed[1]}"', 1, 1))  # fmt: skip
@@ -245,8 +246,8 @@ class _Front:
 
     def _name(self, parameters: Parameters) -> str:
         quoted = kind_of(parameters[0]) == "string"
-        name = (string(parameters[0]) if quoted else choice(parameters[0], "GRID", "MATRIX")).upper()
-        if name not in ("GRID", "MATRIX"):
+        name = (string(parameters[0]) if quoted else choice(parameters[0], *_TRACES)).upper()
+        if name not in _TRACES:
             raise ScpiError(-224, name[:40])
         return name
 
@@ -259,6 +260,8 @@ class _Front:
         grid, m = self.analyzer.measured()
         if name == "GRID":
             return self._encode(grid)
+        if name == "SWITCH":
+            return self._encode(np.ascontiguousarray(self.analyzer.switch_terms()).view(np.float64).ravel())
         rows = np.empty((len(m), 4), np.complex128)
         for column, (receiver, source) in enumerate(_PLANES):
             rows[:, column] = m[:, receiver, source]

@@ -222,3 +222,8 @@ class WorldReadings:
         raw[:, 0, 1] += (spurs := self.receivers.noise.spurs(f_hz, bandwidth_hz, power_dbm))
         raw[:, 1, 0] += spurs
         return self.receivers.noisy(raw, bandwidth_hz, power_dbm, averages)
+
+    def switch_terms(self, f_hz: Real) -> Matrix:
+        """What the idle port reflects, with port 1 and with port 2 driven, ``(f, 2)``."""
+        warmth = self.world.temperature()
+        return np.stack([self.receivers.switch_term(f_hz, port, warmth) for port in (1, 2)], -1)

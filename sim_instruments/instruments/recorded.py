@@ -34,6 +34,16 @@ class Recorded:
         self.world = world
         self.files = dict(files)
 
+    def switch_terms(self, f_hz: Real) -> Matrix:
+        """Nobody recorded what the idle port reflected.
+
+        Raises
+        ------
+        ScpiError
+            -241, always.
+        """
+        raise ScpiError(-241, "no recording of the idle port")
+
     def read(
         self, f_hz: Real, bandwidth_hz: float, power_dbm: float, averages: int, source_on: bool
     ) -> Matrix:

@@ -38,7 +38,7 @@ SLIPS = {
     "step number": ("- sweep: {as: raw, with: plane}", "- 7: {}", "7: {}", "there is no step '7'", "Known steps"),
     "figure typo": ("figure: insertion loss", "figure: insertion los", "insertion los", "is no figure", "did you mean 'insertion loss'?"),
     "method typo": ("method: SOLT", "method: SOLTT", "SOLTT", "method: 'SOLTT' is not known", "Did you mean 'SOLT'?"),
-    "method in lower case": ("method: SOLT", "method: trl", "trl", "method: 'trl' is not allowed here", "'SOLT' or 'SOL'"),
+    "method in lower case": ("method: SOLT", "method: trl", "trl", "method: 'trl' is not known", "Did you mean 'TRL'?"),
     "limit without bound": (", at most: 0.45 dB", "", "{figure", "neither `at most` nor `at least`", ""),
     "limit without unit": ("at most: 0.45 dB", "at most: 0.45", "0.45}", "`at most`: '0.45' has no unit", '"0.5 dB"'),
     "limit in another unit": ("at most: 0.45 dB", "at most: 3 MHz", "3 MHz", "'3 MHz' is not in dB", ""),

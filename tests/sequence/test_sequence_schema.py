@@ -53,7 +53,7 @@ def test_installed_files_fit_the_schema(kind, installed):
         ("bandwidth:", "bandwith:"),
         ("- de-embed:", "- deembed:"),
         ("figure: insertion loss", "figure: insertion los"),
-        ("method: SOLT", "method: TRL"),
+        ("method: SOLT", "method: trl"),
         ("edition: 1", "edition: 2"),
         ("title: Demo\n", ""),
         ("points: 801", "points: many"),

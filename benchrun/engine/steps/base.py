@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Protocol, TypeVar
 
@@ -76,8 +77,16 @@ class Execution(Protocol[S]):
         ...
 
 
-def carry_out(step: StepModel, work: AtWork) -> None:
-    """Read what a step needs read, then do its arithmetic: all that most kinds need."""
+def carry_out(step: StepModel, work: AtWork, last: Callable[[StepModel, AtWork], None] | None = None) -> None:
+    """Read what a step needs read, then do its arithmetic: all that most kinds need.
+
+    Parameters
+    ----------
+    step, work
+        The step, and what it may use.
+    last
+        Called after the last reading, while everything is still connected.
+    """
     needed, analyzer = hookups(step, work.procedure), work.analyzer
     if needed:
         if analyzer is None:
@@ -102,6 +111,8 @@ def carry_out(step: StepModel, work: AtWork) -> None:
                     step=step.name, hookup=hookup.text, points=len(settings.grid_hz), sha256=reading.sha256
                 )
             )
+    if last is not None:
+        last(step, work)
     apply(step, work.state, work.kept.of(step.name))
     if step.name in work.state.agreements:
         work.emit(Noted(text=f"scikit-rf agrees within {work.state.agreements[step.name]:.0e}"))

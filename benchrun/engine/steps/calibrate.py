@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from benchrun.engine.events import Noted
+from benchrun.engine.kept import Reading
 from benchrun.engine.steps.base import AtWork, carry_out
 from benchrun.evaluate.chain import hookups
-from benchrun.sequence.steps import Calibrate
+from benchrun.rf.calibration.switch_terms import SWITCH_READING
+from benchrun.sequence.steps import Calibrate, StepModel
 
 __all__ = ["CalibrateExecution"]
 
@@ -18,5 +21,16 @@ class CalibrateExecution:
         return f"{step.method} with kit {step.kit}, {count} connections"
 
     def carry_out(self, step: Calibrate, work: AtWork) -> None:
-        """As every step with readings."""
-        carry_out(step, work)
+        """As every step with readings; with the thru also what the idle ports reflect, where that can be."""
+        carry_out(step, work, self._idle_ports if step.how.without_switch_terms else None)
+
+    def _idle_ports(self, step: StepModel, work: AtWork) -> None:
+        assert isinstance(step, Calibrate)  # called for its own step
+        assert work.analyzer is not None  # it has just swept
+        terms = work.analyzer.switch_terms()
+        if terms is None:
+            work.emit(Noted(text=step.how.without_switch_terms, weight="warning"))
+            return
+        grid = work.procedure.sequence.sweep_of(step).grid()
+        work.kept.add(Reading.of(step.name, SWITCH_READING, grid, terms, work.clock.seconds()))
+        work.emit(Noted(text="read what the idle ports reflect"))

@@ -12,7 +12,9 @@ from benchrun.evaluate.procedure import Procedure
 from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import Calibration, State, agree
 from benchrun.hookup import Hookup
-from benchrun.rf.calibration import METHODS, define
+from benchrun.rf.calibration import define
+from benchrun.rf.calibration.one_path import turned_round
+from benchrun.rf.calibration.switch_terms import SWITCH_READING
 from benchrun.rf.twoport import ComplexArray, TwoPort
 from benchrun.sequence.steps import Calibrate
 
@@ -31,20 +33,27 @@ class CalibrateArithmetic:
 
     def hookups(self, step: Calibrate, procedure: Procedure) -> tuple[Hookup, ...]:
         """The standards of the method."""
-        return METHODS[step.method].required(step.used_ports, step.isolation)
+        return step.how.required(step.used_ports, step.isolation, step.options)
 
     def apply(self, step: Calibrate, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave a :class:`Calibration`."""
-        procedure, method, ports = state.procedure, METHODS[step.method], step.used_ports
+        procedure, method, ports = state.procedure, step.how, step.used_ports
         swept = two_ports(readings)
         f_hz, kit = procedure.sequence.sweeps[step.sweep].grid(), procedure.kits[step.kit]
-        terms = method.solve(ports, define(kit, method.standards, f_hz), swept, step.isolation)
-        examiner = method.examiner(f_hz, ports, kit, swept, step.isolation)
-        for hookup in self.hookups(step, procedure)[-1:]:  # the last one joins the ports, or is the load
-            raw = swept[hookup.text]
-            agree(state, step.name, _correct(terms, raw, ports), examiner(raw))
+        options = step.options
+        definitions = define(kit, method.takes(options), f_hz)
+        terms = method.solve(ports, definitions, swept, step.isolation, options)
+        examiner = method.examiner(f_hz, ports, kit, swept, step.isolation, options)
+        raw = swept[self.hookups(step, procedure)[-1].text]  # the last one joins the ports, or is the load
+        if step.turns:
+            raw = turned_round(raw, raw)
+        agree(state, step.name, _correct(terms, raw, ports), examiner(raw))
         _keep_heap()
-        noise = _noise(len(ports), len(f_hz), procedure.noise_seed) if procedure.residual.declared else None
+        # Declared residual terms are those of a full correction: they say nothing of a mere normalization, nor
+        # of a method whose idle ports nobody read.
+        full = method.name != "response" and (not method.without_switch_terms or SWITCH_READING in swept)
+        declared = procedure.residual.declared and full
+        noise = _noise(len(ports), len(f_hz), procedure.noise_seed) if declared else None
         state.calibrations[step.name] = Calibration(f_hz, ports, terms, examiner, noise, kit.z0_ohm)
 
 

@@ -9,6 +9,7 @@ from benchrun.evaluate.procedure import Procedure
 from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import State, agree
 from benchrun.hookup import Hookup
+from benchrun.rf.calibration.one_path import turned_round
 from benchrun.rf.calibration.one_port import own_reflection
 from benchrun.rf.terms import OnePortTerms, TwelveTerms
 from benchrun.rf.tone import Tone
@@ -30,15 +31,21 @@ class SweepArithmetic:
     """Correct where a calibration is named; else hand on the raw reading, without uncertainty."""
 
     def hookups(self, step: Sweep, procedure: Procedure) -> tuple[Hookup, ...]:
-        """The unit in its fixture."""
+        """The unit in its fixture; once more turned round where the calibration is for one path."""
         named = (s for s in procedure.sequence.steps if isinstance(s, Calibrate) and s.name == step.with_)
-        port = next((s.used_ports[0] for s in named), 1)
-        return (procedure.unit_hookup(port),)
+        calibration = next(named, None)
+        forward = procedure.unit_hookup(calibration.used_ports[0] if calibration else 1)
+        if calibration is None or not calibration.turns:
+            return (forward,)
+        return forward, procedure.unit_hookup(1, turned=True)
 
     def apply(self, step: Sweep, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave a network."""
         procedure = state.procedure
-        raw = two_ports(readings)[self.hookups(step, procedure)[0].text]
+        needed, swept = self.hookups(step, procedure), two_ports(readings)
+        raw = swept[needed[0].text]
+        if len(needed) == 2:
+            raw = turned_round(raw, swept[needed[1].text])
         if step.with_ is None:
             grid = procedure.sequence.sweep_of(step).grid()
             nominal: Data = raw if procedure.sequence.unit.ports == 2 else raw.s11

@@ -281,4 +281,4 @@ def test_bytes_beyond_ascii_are_refused_and_the_line_lives(bench):
 
 
 def test_version_self_test_and_catalogue(bench):
-    assert bench.ask("SYST:VERS?;*TST?;:TRAC:CAT?") == '1999.0;0;"GRID","MATRIX"'
+    assert bench.ask("SYST:VERS?;*TST?;:TRAC:CAT?") == '1999.0;0;"GRID","MATRIX","SWITCH"'
