@@ -98,9 +98,9 @@ def agree(state: State, step: str, ours: Data, theirs: Data) -> float:
     InvalidMeasurement
         If the greatest difference is above :data:`AGREEMENT`, or no number.
     """
-    difference = float(
-        max(np.max(np.abs(a - b)) for a, b in zip(_planes(ours), _planes(theirs), strict=True))
-    )
+    # numpy's greatest of all: Python's own would pass over a nan that is not the first.
+    planes = zip(_planes(ours), _planes(theirs), strict=True)
+    difference = float(np.max([np.max(np.abs(a - b)) for a, b in planes]))
     if np.isfinite(difference):  # no number can stand in a record
         state.agreements[step] = max(difference, state.agreements.get(step, 0.0))
     if not difference <= AGREEMENT:
