@@ -56,7 +56,7 @@ def duration(seconds: float) -> str:
     >>> duration(318.2), duration(4.26), duration(7300)
     ('5 min 18 s', '4.3 s', '2 h 1 min')
     """
-    if seconds < 60:
+    if seconds < 59.95:  # or it would be rounded to 60.0 s
         return f"{seconds:.1f} s"
     minutes, rest = divmod(round(seconds), 60)
     return f"{minutes} min {rest} s" if minutes < 60 else f"{minutes // 60} h {minutes % 60} min"
