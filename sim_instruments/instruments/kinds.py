@@ -6,6 +6,7 @@ from collections.abc import Callable, Mapping
 from typing import Any
 
 from sim_instruments.draws import Draws
+from sim_instruments.instruments.canned import Canned
 from sim_instruments.instruments.generator import Generator
 from sim_instruments.instruments.power_meter import PowerMeter
 from sim_instruments.instruments.routing import WiredWorld
@@ -26,5 +27,6 @@ KINDS: Mapping[
     "supply": Supply,
     "switch matrix": Switch,
     "thermometer": Thermometer,
+    "pyvisa-sim": Canned,
 }
 """Each takes the world, the four fields of its identity, its description in the bench file, and its draws."""

@@ -144,6 +144,40 @@ def test_the_dialects_differ(desk) -> None:
     assert len(values) == 401
 
 
+def test_a_seed_makes_one_bench() -> None:
+    """The same trace for the same seed, noise and errors included; another for another."""
+    traces = []
+    for seed in (5, 5, 6):
+        bench = load_bench("amplifier", seed)
+        bench.world.connect([(["thru"], [3, 4])])
+        for address, message in ((19, b"FREQ 169 MHZ;:POW 0;:OUTP ON\n"), (22, b"INIT;:TRAC? TRACE\n")):
+            line = bench.instruments[f"GPIB0::{address}::INSTR"].line()
+            line.receive(message)
+            line.proceed()
+        traces.append(line.take(1 << 30)[0])
+    assert traces[0] == traces[1] != traces[2]
+
+
+def test_the_network_analyzers_level_compresses_the_unit_too(desk) -> None:
+    """By hand or by switch: less gain at a level near compression, from the front only."""
+    desk.supply.write("VOLT 5 V;:CURR 0.2;:OUTP ON")
+    desk.world.offer("DA-0001")
+    f = np.array([169e6])
+
+    def gain_db(power_dbm: float, driven: int = 1) -> float:
+        return float(20 * np.log10(abs(desk.world.between_ports(f, power_dbm, driven)[0, 1, 0])))
+
+    desk.world.connect([(["unit"], [1, 2])])
+    by_hand = gain_db(-30.0) - gain_db(5.0)
+    assert by_hand == pytest.approx(1.0, abs=0.25)
+    assert gain_db(-30.0) == pytest.approx(gain_db(5.0, 2), abs=1e-3)
+    desk.world.connect([])
+    desk.switch.write("ROUT:CLOS (@101)")
+    desk.switch.query("*OPC?")
+    assert desk.world.has_active
+    assert gain_db(-30.0) - gain_db(5.0) == pytest.approx(by_hand, abs=0.1)
+
+
 def test_connections_to_other_ports(desk) -> None:
     """Ports that instruments own, and no others."""
     with pytest.raises(KeyError, match="port 7; there are ports 1, 2, 3, 4, 5, 8 and 9"):
