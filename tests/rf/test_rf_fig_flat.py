@@ -84,7 +84,7 @@ def test_refining_the_grid_converges() -> None:
     assert errors[2] < 1e-3
 
 
-@settings(max_examples=30, deadline=None)
+@settings(derandomize=True, max_examples=30, deadline=None)
 @given(rise=st.floats(-20, 20), a=st.floats(-5, 5), gain=st.floats(-80, 20), factor=st.floats(0.01, 100))
 def test_level_and_frequency_scale_have_no_say(rise: float, a: float, gain: float, factor: float) -> None:
     f_hz = GRIDS["linear"][::10]
@@ -94,7 +94,7 @@ def test_level_and_frequency_scale_have_no_say(rise: float, a: float, gain: floa
         assert_allclose(measure(name, f_hz * factor, db + gain, over).value, one, atol=1e-9)
 
 
-@settings(max_examples=20, deadline=None)
+@settings(derandomize=True, max_examples=20, deadline=None)
 @given(rises=st.lists(st.floats(-10, 10), min_size=2, max_size=6))
 def test_draws_rise_as_their_trace_does(rises) -> None:
     """Monotone in the rise, and each draw its own."""

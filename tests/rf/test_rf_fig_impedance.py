@@ -56,7 +56,7 @@ def test_q_is_the_same_in_series_and_in_parallel() -> None:
     assert_allclose(apart, 13.0, rtol=1e-12)
 
 
-@settings(max_examples=40, deadline=None)
+@settings(derandomize=True, max_examples=40, deadline=None)
 @given(r=st.floats(0.1, 1e4), x=st.floats(-1e4, 1e4), z0=st.floats(10, 300), factor=st.floats(0.1, 10.0))
 def test_impedance_scales_with_its_reference(r: float, x: float, z0: float, factor: float) -> None:
     """The same reflection at another reference means an impedance as many times greater."""

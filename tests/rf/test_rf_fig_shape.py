@@ -135,7 +135,7 @@ def test_a_draw_without_a_crossing_is_nan() -> None:
         assert np.all(np.isfinite(found[[0, 2]]))
 
 
-@settings(max_examples=30, deadline=None)
+@settings(derandomize=True, max_examples=30, deadline=None)
 @given(scale=st.floats(0.01, 100.0), gain=st.floats(-60.0, 20.0), order=st.integers(1, 5))
 def test_scaling_frequency_and_level(scale: float, gain: float, order: int) -> None:
     """Ratios of frequencies do not change, frequencies do by the factor, and level has no say."""
@@ -150,7 +150,7 @@ def test_scaling_frequency_and_level(scale: float, gain: float, order: int) -> N
         assert_allclose(other, one * scale**power, rtol=1e-9)
 
 
-@settings(max_examples=20, deadline=None)
+@settings(derandomize=True, max_examples=20, deadline=None)
 @given(drops=st.lists(st.floats(1.0, 60.0), min_size=2, max_size=5, unique=True))
 def test_a_greater_drop_lies_farther_out(drops) -> None:
     """Monotone, also for a response that comes back."""
