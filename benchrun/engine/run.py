@@ -355,6 +355,11 @@ class _UnitRun:
             return error.folder, f"{error.message} The record stands in {error.folder}: move it to its place."
         except (RecordError, InputError) as error:
             return None, str(error)
+        except Exception as error:  # a fault of the program here must not take the other units' results along
+            return (
+                None,
+                f"the record was not written, by a fault of the program: {type(error).__name__}: {error}",
+            )
         if not self.shared.stored:
             self.shared.stored.update({path: (raw, folder / path) for path, raw in draft.files.items()})
         self.emit(RecordWritten(folder=str(folder), key=signer.key_id))

@@ -147,7 +147,7 @@ def test_another_instrument_is_left_alone(workplace, tmp_path):
     (tmp_path / "bench.yaml").write_text(text.replace(place, place + "    identity: {model: NA-7}\n"))
     w = workplace(bench=str(tmp_path / "bench.yaml"), units=("HF-0001", "HF-0002"))
     journal = ended(
-        w, w.run(), "is 'SIMULATED,NA-2,S0016,1.0'", "'model NA-7' is expected", "GPIB0::16::INSTR"
+        w, w.run(), "is 'SIMULATED,NA-2,S0016,1.0'", "'model NA-7'", "connect the right", "GPIB0::16::INSTR"
     )
     assert w.mishaps.requests == ["*IDN?\n"], "nothing may be sent to an instrument that is not ours"
     assert "safe" not in [e["event"] for e in journal]

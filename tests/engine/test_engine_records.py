@@ -7,10 +7,12 @@ import errno
 import json
 import re
 import tempfile
+from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
 
+from benchrun.clock import FunctionClock
 from benchrun.errors import InputError, RecordNotWritten
 from benchrun.record.keys import KeyStore
 from benchrun.record.storage import Disk
@@ -193,6 +195,26 @@ def test_two_runs_within_a_second_get_two_names(workplace):
     w.run()
     first, second = w.records
     assert first.name != second.name
+
+
+def test_a_fault_while_keeping_is_told_and_spares_the_next_unit(workplace):
+    w = workplace(units=("HF-0001", "HF-0002"))
+    faults = [0, 1, 0, 0]
+
+    def utc():
+        if faults.pop(0):
+            raise ValueError("no date")
+        return datetime(2026, 12, 1, tzinfo=UTC)
+
+    world = w.rehearsal.bench.world
+    answer = w.run(clock=FunctionClock(lambda: world.time_s, world.advance, utc))
+    first, second = answer.document["units"]
+    assert answer.code == 5
+    assert first["record"] is None
+    assert first["trouble"] == ("the record was not written, by a fault of the program: ValueError: no date")
+    assert len(first["figures"]) == 3
+    assert [Path(second["record"])] == w.records
+    assert w.analyzer.output is False
 
 
 def test_a_fault_of_the_program_keeps_what_was_read(workplace):
