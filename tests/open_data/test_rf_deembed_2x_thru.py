@@ -61,7 +61,7 @@ def test_how_near_the_truth_each_method_comes(nzc: Split, zc: Split) -> None:
     assert_allclose(np.max(np.abs(20 * np.log10(np.abs(found.s21 / truth.s21)))), 0.4692, atol=1e-3)
     assert_allclose(np.max(np.abs(found.s11 - truth.s11)), 0.06556, atol=1e-4)
     assert off(zc)[0] < 0.8 * off(nzc)[0]
-    assert off(zc)[1] < 0.5 * off(nzc)[1]
+    assert off(zc)[1] < 0.6 * off(nzc)[1]
 
 
 def test_scikit_rf_takes_the_same_halves_out(nzc: Split, f_hz) -> None:

@@ -15,7 +15,7 @@ from benchrun.rf.calibration.switch_terms import NO_SWITCH, SwitchTerms
 from benchrun.rf.terms import Direction, OnePortTerms, TwelveTerms
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
-__all__ = ["EightTerms", "k_disagreement", "k_estimates"]
+__all__ = ["EightTerms", "k_disagreement", "k_estimates", "twelve_of"]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -50,27 +50,8 @@ class EightTerms:
 
     def twelve(self) -> TwelveTerms:
         """As twelve terms, by which readings are corrected."""
-        one, two, gf, gr = self.one, self.two, self.switch.forward, self.switch.reverse
-        ahead = two.tracking / (1.0 - two.directivity * gf)
-        back = one.tracking / (1.0 - one.directivity * gr)
-        return TwelveTerms(
-            Direction(
-                one.directivity,
-                one.source_match,
-                one.tracking,
-                two.source_match if self.switch.absent else two.source_match + ahead * gf,
-                ahead * self.k,
-                self.leak_21,
-            ),
-            Direction(
-                two.directivity,
-                two.source_match,
-                two.tracking,
-                one.source_match if self.switch.absent else one.source_match + back * gr,
-                back / self.k,
-                self.leak_12,
-            ),
-        )
+        ahead, back = self.two.tracking * self.k, self.one.tracking / self.k
+        return twelve_of(self.one, self.two, ahead, back, self.switch, (self.leak_21, self.leak_12))
 
     def correct(self, m: TwoPort) -> TwoPort:
         """Turn raw readings into true S-parameters."""
@@ -98,6 +79,40 @@ class EightTerms:
         one, two = _renormalise_port(self.one, g), _renormalise_port(self.two, g)
         k = self.k * self.two.tracking * step / two.tracking
         return EightTerms(one, two, k, self.switch, self.leak_21, self.leak_12)
+
+
+def twelve_of(
+    one: OnePortTerms,
+    two: OnePortTerms,
+    ahead: ComplexArray,
+    back: ComplexArray,
+    switch: SwitchTerms = NO_SWITCH,
+    leak: tuple[ComplexArray | complex, ComplexArray | complex] = (0.0, 0.0),
+) -> TwelveTerms:
+    """Twelve terms of two error boxes.
+
+    Parameters
+    ----------
+    one, two
+        Reflection terms of port 1 and of port 2.
+    ahead, back
+        Transmissions ``e10 e32`` and ``e23 e01`` with matched idle ports.
+    switch
+        What the idle ports reflect.
+    leak
+        Isolation forward and reverse.
+    """
+    load, other = two.source_match, one.source_match
+    if not switch.absent:
+        onto_two = 1.0 / (1.0 - two.directivity * switch.forward)
+        onto_one = 1.0 / (1.0 - one.directivity * switch.reverse)
+        load = load + two.tracking * switch.forward * onto_two
+        other = other + one.tracking * switch.reverse * onto_one
+        ahead, back = ahead * onto_two, back * onto_one
+    return TwelveTerms(
+        Direction(one.directivity, one.source_match, one.tracking, load, ahead, leak[0]),
+        Direction(two.directivity, two.source_match, two.tracking, other, back, leak[1]),
+    )
 
 
 def _renormalise_port(port: OnePortTerms, g: ComplexArray | complex) -> OnePortTerms:

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.rf.calibration.method import Definitions, Options
+from benchrun.rf.calibration.self_calibration import root_towards
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
 __all__ = [
@@ -24,12 +25,15 @@ __all__ = [
     "propagation_of",
     "refuse_beyond",
     "refuse_equal",
+    "report_of",
 ]
 
 _LIGHT_M_PER_S = 299_792_458.0
 
 WINDOW_DEG = (20.0, 160.0)
 """How much longer than the thru a line must be, modulo 180 degrees; common practice."""
+
+_WEAK = 1e-3
 
 _ROUNDING_DEG = 0.01
 """A line made for the very edge of the window is not to fail by the last digit."""
@@ -95,21 +99,36 @@ class LineReport:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Eigen:
-    """What thru and line alone tell of port 1.
+    r"""What thru and line alone tell of port 1.
 
     Parameters
     ----------
-    propagation
-        ``exp(-gamma l)`` of the line's excess over the thru, ``(..., f)``.
     match
-        Reading of port 1 with a matched load.
+        Reading of port 1 with a matched load, ``(..., f)``.
     far
         Reciprocal of its reading where :math:`(a S + b)/(c S + 1)` has ``S`` at infinity: ``c / a``.
+    mean, half_gap
+        Of the eigenvalues :math:`e^{-\gamma l}` and :math:`e^{+\gamma l}`; the mean before ``scale``.
+    scale
+        Reciprocal of the transmissions that belong to the matrices.
     """
 
-    propagation: ComplexArray
     match: ComplexArray
     far: ComplexArray
+    mean: ComplexArray
+    half_gap: ComplexArray
+    scale: ComplexArray
+
+    @property
+    def propagation(self) -> ComplexArray:
+        r""":math:`e^{-\gamma l}` of the line's excess over the thru, ``(..., f)``."""
+        return self.mean * self.scale + self.half_gap
+
+    @property
+    def phase_deg(self) -> FloatArray:
+        """Of the first draw's propagation, folded into 0 to 180 degrees, ``(f,)``."""
+        mean, scale, gap = (p.reshape(-1, p.shape[-1])[0] for p in (self.mean, self.scale, self.half_gap))
+        return np.asarray(np.degrees(np.abs(np.angle(mean * scale + gap))))
 
 
 def eigen_of(thru: TwoPort, line: TwoPort, guess: ComplexArray) -> Eigen:
@@ -126,24 +145,23 @@ def eigen_of(thru: TwoPort, line: TwoPort, guess: ComplexArray) -> Eigen:
     dl, dt = line.determinant, thru.determinant
     m11, m12 = line.s11 * thru.s22 - dl, dl * thru.s11 - line.s11 * dt
     m21, m22 = thru.s22 - line.s22, line.s22 * thru.s11 - dt
-    half = 0.5 * (m22 - m11)
-    root = np.sqrt(half * half + m12 * m21)
-    scale = 1.0 / (line.s21 * thru.s12)
-    turn = np.real(np.conj(root * scale) * (guess - 1.0 / guess)) < 0.0
-    root = np.where(turn, -root, root)
-    mean = 0.5 * (m11 + m22)
-    propagation = (mean + root) * scale
+    half, mean = 0.5 * (m22 - m11), 0.5 * (m11 + m22)
+    size = line.s21 * thru.s12
+    scale = 1.0 / size
+    square = (half * half + m12 * m21) * (scale * scale)
+    half_gap = root_towards(square, guess - 1.0 / guess)[0]
+    root = half_gap * size
     # The usual form, without cancellation as long as port 1 transmits more than it reflects ...
     below = root - half
-    weak = np.abs(below) < 1e-2 * np.abs(root)
-    if weak.any():  # ... and the other one where it does not.
-        above = root + half
-        with np.errstate(divide="ignore", invalid="ignore"):
-            match = np.where(weak, -above / m21, -m12 / below)
-            far = np.where(weak, above / m12, m21 / below)
-        return Eigen(propagation, match, far)
-    inverse = 1.0 / below
-    return Eigen(propagation, -m12 * inverse, m21 * inverse)
+    if float(np.min(np.abs(below))) > _WEAK * float(np.max(np.abs(root))):
+        inverse = 1.0 / below
+        return Eigen(m12 * -inverse, m21 * inverse, mean, half_gap, scale)
+    above = root + half  # ... and the other one where it does not.
+    weak = np.abs(below) < np.abs(above)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        match = np.where(weak, -above / m21, -m12 / below)
+        far = np.where(weak, above / m12, m21 / below)
+    return Eigen(match, far, mean, half_gap, scale)
 
 
 def propagation_of(line: TwoPort) -> tuple[ComplexArray, ComplexArray]:
@@ -174,7 +192,7 @@ def guesses_of(
     """Excess propagation of each line, the thru in the lines' own impedance, and that impedance."""
     found = {name: propagation_of(cast(TwoPort, definitions[name])) for name in options.lines}
     g = found[options.lines[0]][1]
-    for name, (_, other) in found.items():
+    for name, (_, other) in list(found.items())[1:]:
         if not np.allclose(other, g, atol=1e-6):
             raise InvalidMeasurement(
                 f"{options.lines[0]} and {name} are defined with different impedances; TRL needs "
@@ -198,9 +216,13 @@ def choose(thru: TwoPort, read: Mapping[str, TwoPort], guesses: Mapping[str, Com
     phases = []
     for name, line in read.items():
         found = eigen_of(first, _first(line), guesses[name].reshape(-1, guesses[name].shape[-1])[0])
-        phases.append(np.degrees(np.abs(np.angle(found.propagation))))
-    phase = np.array(phases)
-    return LineReport(tuple(read), phase, np.argmin(np.abs(phase - 90.0), axis=0))
+        phases.append(found.phase_deg)
+    return report_of(tuple(read), np.array(phases))
+
+
+def report_of(names: tuple[str, ...], phase_deg: FloatArray) -> LineReport:
+    """Choose by phases ``(lines, f)``."""
+    return LineReport(names, phase_deg, np.argmin(np.abs(phase_deg - 90.0), axis=0))
 
 
 def _first(two: TwoPort) -> TwoPort:

@@ -74,7 +74,7 @@ class LineReflectMatch(TwoPortMethod):
         kappa = (s - g) / ((1.0 - y * s) * here)
         n = 1.0 / (kappa - far * g)
         a, b, c = (1.0 - kappa * b * y) * n, (kappa * b - g) * n, (far - kappa * y) * n
-        return boxes(a, b, c, read, thru, switch, leak).twelve()
+        return boxes(a, b, c, read, thru).twelve(switch, leak)
 
     def examiner(
         self,

@@ -114,7 +114,7 @@ class LineReflectReflectMatch(TwoPortMethod):
         d = kappa * fixed.minus * w_plus - fixed.plus * w_minus
         n = 1.0 / (kappa * fixed.minus - fixed.plus)
         a, b, c = (w_minus - kappa * w_plus) * n, d * n, (1.0 - kappa) * n
-        return boxes(a, b, c, read, thru, switch, leak).twelve()
+        return boxes(a, b, c, read, thru).twelve(switch, leak)
 
     def examiner(
         self,

@@ -9,7 +9,7 @@ import numpy as np
 from benchrun.errors import InvalidMeasurement
 from benchrun.hookup import Connection, Hookup
 from benchrun.rf.calibration.method import Readings
-from benchrun.rf.calibration.one_port import own_reflection
+from benchrun.rf.calibration.one_port import finite, own_reflection
 from benchrun.rf.calibration.switch_terms import SwitchTerms
 from benchrun.rf.twoport import ComplexArray, TwoPort
 
@@ -32,7 +32,7 @@ def believed(planes: Iterable[ComplexArray], what: str) -> None:
     InvalidMeasurement
         Naming ``what``.
     """
-    if not all(np.isfinite(plane).all() for plane in planes):
+    if not all(finite(plane) for plane in planes):
         raise InvalidMeasurement(
             f"The reading of the {what} holds a value that is not a number.", f"Read the {what} again."
         )

@@ -30,11 +30,25 @@ def far_terms(
     The corrected reflection of "thru ended in the load match" is solved for the load match; for a flush
     thru this is the textbook ``eL = (M11 - eD) / (eS (M11 - eD) + eR)``.
     """
-    seen = near.correct(reflection)
-    u = seen - thru.s11
-    load = u / (thru.s12 * thru.s21 + thru.s22 * u)
-    d = 1.0 - near.source_match * thru.s11 - load * thru.s22 + near.source_match * load * thru.determinant
-    return load, (transmission - leak) * d / thru.s21
+    # seen = d / q; both fractions are made one, so that only one division is made.
+    d = reflection - near.directivity
+    q = near.tracking + near.source_match * d
+    if _flush(thru):
+        load = d / q
+        factor = 1.0 - near.source_match * load
+    else:
+        u = d - thru.s11 * q
+        load = u / (thru.s12 * thru.s21 * q + thru.s22 * u)
+        factor = 1.0 - near.source_match * thru.s11 - load * (thru.s22 - near.source_match * thru.determinant)
+        factor *= 1.0 / thru.s21
+    through = transmission - leak if isinstance(leak, np.ndarray) else transmission
+    return load, through * factor
+
+
+def _flush(thru: TwoPort) -> bool:
+    return bool(
+        not (np.any(thru.s11) or np.any(thru.s22)) and np.all(thru.s21 == 1.0) and np.all(thru.s12 == 1.0)
+    )
 
 
 class ShortOpenLoadThru:

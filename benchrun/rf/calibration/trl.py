@@ -23,11 +23,12 @@ from benchrun.rf.calibration.lines import (
     length_m,
     refuse_beyond,
     refuse_equal,
+    report_of,
 )
 from benchrun.rf.calibration.method import PLAIN, Definitions, Examiner, Options, Readings
 from benchrun.rf.calibration.reading import leaks, pair, reflections
 from benchrun.rf.calibration.scikit_rf import Networks
-from benchrun.rf.calibration.self_calibration import boxes, sure_of_sign
+from benchrun.rf.calibration.self_calibration import boxes, refuse_unsure, root_towards
 from benchrun.rf.calibration.switch_terms import SwitchTerms
 from benchrun.rf.calibration.two_port_method import TwoPortMethod
 from benchrun.rf.kit import Kit
@@ -64,27 +65,35 @@ class ThruReflectLine(TwoPortMethod):
         read = pair(readings, "thru", switch, leak)
         lines = {name: pair(readings, name, switch, leak) for name in options.lines}
         w1, w2 = reflections(readings, options.reflect, (1, 2))
-        refuse_equal(read, lines)
         guesses, thru, g = guesses_of(definitions, options)
-        report = choose(read, lines, guesses)
+        if len(lines) == 1:
+            name = options.lines[0]
+            eigen = eigen_of(read, lines[name], guesses[name])
+            report = report_of(options.lines, eigen.phase_deg[np.newaxis])
+        else:
+            report = choose(read, lines, guesses)
+            guess = _planes(report, list(guesses.values()))
+            eigen = eigen_of(read, _at_each_point(report, list(lines.values())), guess)
+        if len(lines) > 1 or not report.within.all():
+            refuse_equal(read, lines)
         refuse_beyond(report, options.beyond_window)
-        line, guess = _at_each_point(report, list(lines.values())), _planes(report, list(guesses.values()))
-        eigen = eigen_of(read, line, guess)
         b, far = eigen.match, eigen.far
-        m11, m12, m21 = -read.determinant, read.s11, -read.s22
-        through = thru.s12 * thru.s21
-        # The reflect on port 1, over a; and on port 2, carried through the thru, over 1/a.
-        here = (w1 - b) / (1.0 - w1 * far)
-        there = ((m21 - far * m11) + (1.0 - far * m12) * w2) / ((m11 - b * m21) + (m12 - b) * w2)
+        s11, s22, det = read.s11, read.s22, read.determinant
+        # The reflect on port 1, over a: p / q; and on port 2, carried through the thru, over 1 / a: x / y.
+        p, q = w1 - b, 1.0 - w1 * far
+        x = (far * det - s22) + (1.0 - far * s11) * w2
+        y = (b * s22 - det) + (s11 - b) * w2
         declared = np.asarray(definitions[options.reflect])
         if np.any(g):
             declared = (declared - g) / (1.0 - g * declared)
-        s = np.sqrt(here * there * through)
-        s = np.where(np.real(s * np.conj(declared)) < 0.0, -s, s)
-        sure_of_sign(s, declared, options.reflect)
-        a = here / s
-        terms = boxes(a, b, far * a, read, thru, switch, leak)
-        return (terms.renormalised(g) if np.any(g) else terms).twelve()
+        inverse = 1.0 / (q * y)
+        found, least = root_towards((p * x) * inverse * (thru.s12 * thru.s21), declared)
+        refuse_unsure(least, options.reflect)
+        a = (p * y) * inverse / found
+        result = boxes(a, b, far * a, read, thru)
+        if np.any(g):
+            return result.eight(switch, leak).renormalised(g).twelve()
+        return result.twelve(switch, leak)
 
     @staticmethod
     def report(
