@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+import skrf
 
 from sim_instruments.instruments.signals import products
 
@@ -202,18 +203,49 @@ def test_mismatch_at_both_ends_stays_within_its_limits(make_bench, generator, an
     assert seen.errors() == []
 
 
-def test_the_linear_way_agrees_with_the_s_parameters(make_bench, generator, analyzer) -> None:
-    """Matched ends: what arrives is S21 of the path, whatever reflects inside."""
-    bench = make_bench(
-        line={"kind": "line", "sections": [{"delay": "3 ns", "impedance": 75}]},
-        pad={"kind": "pad", "loss": "3 dB"},
-    )
-    source = bench.add(generator)
-    bench.add(analyzer)
-    bench.world.connect([(["pad", "line", "pad"], [4, 3])])
-    source.write("POW 0;:OUTP ON;:FREQ 123 MHZ")
-    s21 = bench.world.path(3, 4, np.array([123e6]))[0, 1, 0]
-    assert bench.world.arriving(4).wave[0] == pytest.approx(s21, abs=1e-3)
+@pytest.mark.parametrize("ports", [[3, 4], [4, 3]])
+def test_the_linear_way_agrees_with_scikit_rf(make_bench, amplifier, generator, analyzer, ports) -> None:
+    """Bad matches at both ends and within: source, parts and load cascaded as networks (scikit-rf)."""
+    line = {"kind": "line", "sections": [{"delay": "3 ns", "impedance": 75}]}
+    amplifier.update({"input": 6, "output": 8, "reverse": 20})
+    bench = make_bench(line=line, pad={"kind": "pad", "loss": "1 dB"}, amp=amplifier)
+    bench.add(generator, match=6)
+    bench.add(analyzer, match=8)
+    world = bench.world
+    world.torque_wrench = False
+    row = ["pad", "line", "amp", "line"]
+    world.connect([(row if ports == [3, 4] else row[::-1], ports)])
+    f = np.array([123e6])
+    source, load = np.zeros((1, 2, 2), complex), np.zeros((1, 2, 2), complex)
+    source[0, 1], load[0, :, 0] = [1.0, world.outlets[3].gamma(f)[0]], [world.outlets[4].gamma(f)[0], 1.0]
+    inner = skrf.Network(f=f, s=world.path(3, 4, f), z0=50, f_unit="Hz")
+    whole = skrf.Network(f=f, s=source, z0=50, f_unit="Hz") ** inner
+    expected = (whole ** skrf.Network(f=f, s=load, z0=50, f_unit="Hz")).s[0, 1, 0]
+    # -60 dBm: too low to compress.
+    world.outlets[3].sources[0].frequency, world.outlets[3].sources[0].power = 123e6, -60.0
+    world.outlets[3].sources[0].output = True
+    assert world.arriving(4).wave[0] * 1e3 == pytest.approx(expected, rel=1e-6)
+
+
+def test_phase_noise_falls_by_20_db_a_decade(chain) -> None:
+    """-90 dBc/Hz at 10 kHz, -110 at 100 kHz, in a bandwidth of 1 kHz (common practice)."""
+    _, sources, seen = chain(("thru",), **{"phase noise": -90, "noise figure": 0})
+    sources[0].write("POW 0")
+    seen.write("FREQ:CENT 100 MHZ;SPAN 400 KHZ;:BAND 1 KHZ;:DET AVER;:SWE:POIN 401;:SWE:TIME 100")
+    level = seen.trace()
+    for away, expected in ((20, -90.0), (100, -110.0)):  # points are 1 kHz apart
+        beside = np.mean(10 ** (level[200 + away : 203 + away] / 10))
+        fallen = 20 * np.log10((away + 1) / (10 if away == 20 else 100))
+        assert 10 * np.log10(beside) == pytest.approx(expected + 30.27 - fallen, abs=0.2)
+
+
+def test_the_analyzers_own_compression(chain) -> None:
+    """1 dB low where the mixer meets its compression level; right with attenuation (definition of P1dB)."""
+    _, sources, seen = chain(("thru",), compression=5)
+    sources[0].write("POW 5")
+    assert _level(seen, F0) == pytest.approx(4.0, abs=0.02)
+    seen.write("POW:ATT 30")
+    assert _level(seen, F0) == pytest.approx(5.0, abs=0.02)
 
 
 def test_backwards_through_an_amplifier(chain) -> None:

@@ -134,6 +134,7 @@ def test_an_open_channel_leaks(bench, client) -> None:
     one = 10 ** (-80 / 20)
     assert abs(leak[1]) == pytest.approx(one * (1 + 10**-0.5), rel=1e-2)
     assert _db(leak[1] / leak[0]) == pytest.approx(20, abs=0.1)
+    np.testing.assert_allclose(_through(bench)[:, 0, 1], leak)
 
 
 def test_a_signal_leaks_too(bench, client, generator, analyzer) -> None:
