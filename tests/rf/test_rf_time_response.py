@@ -21,6 +21,7 @@ from benchrun.rf.timedomain import (
     step,
     window,
 )
+from benchrun.rf.timedomain.blocks import by_rows
 from benchrun.rf.timedomain.window import turns
 
 STEP = 5e6
@@ -238,3 +239,18 @@ def test_draws_share_every_step() -> None:
         assert both.shape == (2, len(t))
         assert_allclose(both[1], view(F_HZ, planes[1])[1], rtol=0, atol=1e-15)
     assert_allclose(gated(F_HZ, planes, 0, 40e-9)[1][0], gated(F_HZ, planes[0], 0, 40e-9)[1], atol=1e-15)
+
+
+@pytest.mark.parametrize("count", [1, 1 << 18, 1 << 21])
+def test_blocks_of_draws_are_put_together_again(count: int) -> None:
+    """In one block, in blocks of four with a rest, or row by row: each row its own, in its place."""
+    plane, seen = np.arange(42.0).reshape(2, 7, 3) + 0j, []
+
+    def function(block: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        seen.append(len(block))
+        return block.real.sum(-1), block.real.max(-1)
+
+    total, greatest = by_rows(plane, count, function)
+    assert_allclose(total, plane.real.sum(-1))
+    assert_allclose(greatest, plane.real.max(-1))
+    assert seen == {1: [14], 1 << 18: [4, 4, 4, 2], 1 << 21: [1] * 14}[count]

@@ -65,8 +65,7 @@ def _impedance(
     port: int = 1,
     reference: float = 50.0,
 ) -> Found:
-    plane = reflection(network, port)
-    samples = harmonics(f_hz, plane)
+    samples = harmonics(f_hz, reflection(network, port))
     # Half the width of the step's rise: what lies nearer than that to a joint is the joint still.
     cell = velocity * LIGHT / (4.0 * samples.step_hz * samples.plane.shape[-1])
     if distance < cell:
@@ -75,7 +74,7 @@ def _impedance(
             f"only {render(cell, Dimension.LENGTH)} of this line.",
             "Sweep to a higher frequency, or look farther along.",
         )
-    return _found(f_hz, impedance_at(f_hz, plane, 2.0 * distance / (velocity * LIGHT), reference))
+    return _found(f_hz, impedance_at(samples, 2.0 * distance / (velocity * LIGHT), reference))
 
 
 _PEAK = (

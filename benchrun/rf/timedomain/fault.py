@@ -8,8 +8,9 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.quantity import Dimension, render
+from benchrun.rf.timedomain.blocks import by_rows
 from benchrun.rf.timedomain.grid import even
-from benchrun.rf.timedomain.response import envelope
+from benchrun.rf.timedomain.response import envelope, length_for
 from benchrun.rf.timedomain.window import turns, window
 from benchrun.rf.twoport import ComplexArray, FloatArray
 
@@ -69,22 +70,25 @@ def greatest_reflection(
             f"{render(period, Dimension.TIME)}.",
             "Sweep in smaller steps, or look at a shorter stretch.",
         )
+    time, size = by_rows(s, length_for(n, 2), lambda block: _found(step_hz, block, low, high))
+    return Fault(time, size)
+
+
+def _found(step_hz: float, s: ComplexArray, low: float, high: float) -> tuple[FloatArray, FloatArray]:
+    """Times and sizes of a block of rows, nan where no reflection stands out."""
     t, value = envelope(step_hz, s)
     # Compared as squares: a root for each sample would only cost time.
     power = value.real**2 + value.imag**2
     count = len(t)
     first, last = int(np.ceil(low / t[1] - 1e-9)), int(np.floor(high / t[1] + 1e-9))
-    peak = first + np.argmax(power[..., first : last + 1], -1)
-
-    def beside(offset: int) -> FloatArray:
-        return np.take_along_axis(power, ((peak + offset) % count)[..., np.newaxis], -1)[..., 0]
-
-    before, here, after = beside(-1), beside(0), beside(1)
+    peak = first + np.argmax(power[:, first : last + 1], -1)
+    rows = np.arange(len(power))
+    before, here, after = (power[rows, (peak + offset) % count] for offset in (-1, 0, 1))
     # Every fifth sample tells the median well enough, a fifth of the sorting.
-    told = (here >= before) & (here >= after) & (here > STANDS_OUT**2 * np.median(power[..., ::5], -1))
+    told = (here >= before) & (here >= after) & (here > STANDS_OUT**2 * np.median(power[:, ::5], -1))
     coarse = (peak + _vertex(before, here, after)) * t[1]
     time, size = _refined(step_hz, s, coarse, t[1] / 4.0)
-    return Fault(np.where(told, time, np.nan), np.where(told, size, np.nan))
+    return np.where(told, time, np.nan), np.where(told, size, np.nan)
 
 
 def _vertex(before: FloatArray, here: FloatArray, after: FloatArray) -> FloatArray:
@@ -100,15 +104,14 @@ def _refined(
     """Vertex and height from the transform itself at three times close together."""
     n = plane.shape[-1]
     weight = window("Kaiser", n)
-    flat, times = plane.reshape(-1, n), np.atleast_1d(time_s).ravel()
-    found, height = np.empty(len(times)), np.empty(len(times))
+    found, height = np.empty(len(time_s)), np.empty(len(time_s))
     middle = -(n - 1) / 2.0  # about the middle of the sweep, where the turning is least
     shift = turns(2.0 * np.pi * step_hz * apart_s, middle, n)
-    for row, start in enumerate(times):  # row by row: a draw's three turns are as large as its sweep
-        x = flat[row] * weight * turns(2.0 * np.pi * step_hz * start, middle, n)
+    for row, start in enumerate(time_s):  # row by row: a draw's three turns are as large as its sweep
+        x = plane[row] * weight * turns(2.0 * np.pi * step_hz * start, middle, n)
         three = [abs(y.sum()) ** 2 for y in (x * shift.conj(), x, x * shift)]
         offset = _vertex(*(np.asarray(p) for p in three))
         found[row] = start + offset * apart_s
         low, mid, high = np.log(np.maximum(three, 1e-300))
         height[row] = np.exp((mid - 0.25 * (low - high) * offset) / 2.0) / weight.sum()
-    return found.reshape(np.shape(time_s)), height.reshape(np.shape(time_s))
+    return found, height

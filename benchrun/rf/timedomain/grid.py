@@ -100,6 +100,9 @@ def harmonics(f_hz: FloatArray, plane: ComplexArray) -> Harmonics:
     dc = np.asarray(plane[..., 0].real) if f_hz[0] == 0 else None
     nearest = np.clip(np.searchsorted(f_hz, wanted - widest * _ON_GRID), 0, len(f_hz) - 1)
     if np.all(np.abs(f_hz[nearest] - wanted) <= _ON_GRID * step):
+        first, last = int(nearest[0]), int(nearest[-1])
+        if last - first + 1 == count:  # every sample from the first multiple on: nothing to copy
+            return Harmonics(step, plane[..., first : last + 1], dc)
         return Harmonics(step, np.ascontiguousarray(plane[..., nearest]), dc)
     return Harmonics(step, _resampled(f_hz, plane, wanted), dc)
 

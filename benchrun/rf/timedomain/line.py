@@ -6,7 +6,8 @@ import numpy as np
 
 from benchrun.errors import InvalidMeasurement
 from benchrun.quantity import Dimension, render
-from benchrun.rf.timedomain.grid import harmonics
+from benchrun.rf.timedomain.blocks import by_rows
+from benchrun.rf.timedomain.grid import Harmonics
 from benchrun.rf.timedomain.response import dc_by_causality, step
 from benchrun.rf.timedomain.window import turns, window
 from benchrun.rf.twoport import ComplexArray, FloatArray
@@ -53,10 +54,19 @@ def impedance_along(
     return t, _impedance(rho, z0_ohm)
 
 
-def impedance_at(f_hz: FloatArray, plane: ComplexArray, time_s: float, z0_ohm: float = 50.0) -> FloatArray:
+def impedance_at(samples: Harmonics, time_s: float, z0_ohm: float = 50.0) -> FloatArray:
     """Impedance at one time there and back, Kaiser window, the value at 0 Hz by causality or measured.
 
     The impulse response is integrated harmonic by harmonic, so there are no samples of time to interpolate.
+
+    Parameters
+    ----------
+    samples
+        Of :func:`.harmonics`, planes ``(..., n)``.
+    time_s
+        From 0 up.
+    z0_ohm
+        Reference impedance, real.
 
     Returns
     -------
@@ -67,9 +77,8 @@ def impedance_at(f_hz: FloatArray, plane: ComplexArray, time_s: float, z0_ohm: f
     Raises
     ------
     InvalidMeasurement
-        If the time lies beyond what the sweep can show, or the sweep cannot be put on harmonics.
+        If the time lies beyond what the sweep can show.
     """
-    samples = harmonics(f_hz, plane)
     reach = 0.625 / samples.step_hz
     if not 0.0 <= time_s <= reach:
         raise InvalidMeasurement(
@@ -77,12 +86,18 @@ def impedance_at(f_hz: FloatArray, plane: ComplexArray, time_s: float, z0_ohm: f
             f"but the sweep shows only {render(reach, Dimension.TIME)}.",
             "Sweep in smaller steps from one step upwards, or look at a nearer place.",
         )
-    dc, unrest = dc_by_causality(samples)
     n = samples.plane.shape[-1]
     order, weight = np.arange(1, n + 1), window("Kaiser", n + 1, low_pass=True)[1:]
     # The integral of each harmonic from 3/8 of a period before 0, where nothing has come yet.
     since = turns(2.0 * np.pi * samples.step_hz * time_s, 1.0, n) - turns(-0.75 * np.pi, 1.0, n)
-    rho = (samples.plane * (weight * since / (1j * np.pi * order))).real.sum(-1)
+    kernel = weight * since / (1j * np.pi * order)
+
+    def integral(plane: ComplexArray) -> tuple[FloatArray, FloatArray]:
+        found = (plane * kernel).real.sum(-1)
+        return found, found
+
+    dc, unrest = dc_by_causality(samples)
+    rho = by_rows(samples.plane, n, integral)[0]
     rho = rho + (dc if samples.dc is None else samples.dc) * (time_s * samples.step_hz + 0.375)
     return np.where(unrest <= RESTLESS, _impedance(rho, z0_ohm), np.nan)
 

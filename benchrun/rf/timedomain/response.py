@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from benchrun.rf.timedomain.blocks import by_rows
 from benchrun.rf.timedomain.grid import Harmonics, harmonics
 from benchrun.rf.timedomain.window import window
 from benchrun.rf.twoport import ComplexArray, FloatArray
@@ -64,13 +65,18 @@ def dc_by_causality(samples: Harmonics) -> tuple[FloatArray, FloatArray]:
         well below 0.01 where the assumption holds.
     """
     n = samples.plane.shape[-1]
+    return by_rows(samples.plane, length_for(n + 1, 2), _silence)
+
+
+def _silence(plane: ComplexArray) -> tuple[FloatArray, FloatArray]:
+    n = plane.shape[-1]
     weight = window("Kaiser", n + 1, low_pass=True)
     count = length_for(n + 1, 2)
-    spectrum = np.zeros((*samples.plane.shape[:-1], n + 1), np.complex128)
-    spectrum[..., 1:] = samples.plane * weight[1:]
-    silent = np.fft.irfft(spectrum, n=count, axis=-1)[..., count * 5 // 8 : count * 7 // 8]
+    spectrum = np.zeros((len(plane), n + 1), np.complex128)
+    spectrum[:, 1:] = plane * weight[1:]
+    silent = np.fft.irfft(spectrum, n=count, axis=-1)[:, count * 5 // 8 : count * 7 // 8]
     mean = silent.mean(-1)
-    drift = np.cumsum(silent - mean[..., np.newaxis], axis=-1)
+    drift = np.cumsum(silent - mean[:, np.newaxis], axis=-1)
     return -count * mean, drift.max(-1) - drift.min(-1)
 
 
