@@ -7,7 +7,7 @@ from pathlib import Path
 
 import pytest
 
-from benchrun.engine.plan import make_plan
+from benchrun.engine.plan import bench_for, make_plan
 from benchrun.engine.rehearsal import prepare_rehearsal
 from benchrun.engine.run import Job, Outcome, run
 from benchrun.record.keys import KeyStore
@@ -16,6 +16,7 @@ from benchrun.sequence.find import named
 DATE = datetime.date(2026, 12, 1)
 UNITS = {
     "driver-amplifier": (["DA-0001"], ["DA-8001"], ["DA-9001"]),
+    "driver-amplifier-drive": (["DA-0001"], ["DA-8001"], ["DA-9001", "DA-9002"]),
     "harmonic-filter": (["HF-0001", "HF-0002"], ["HF-8001"], ["HF-9001", "HF-9002", "HF-9003", "HF-9004"]),
     "jumper-cable": (["JC-0001", "JC-0002"], ["JC-8001"], ["JC-9001", "JC-9002", "JC-9003"]),
     "pad-10db": (["PD-0001", "PD-0002"], ["PD-8001"], ["PD-9001", "PD-9002"]),
@@ -26,9 +27,9 @@ UNITS = {
 
 
 def rehearse(
-    sequence: str, units: list[str], seed: int, folder: Path, bench: str = "workshop"
+    sequence: str, units: list[str], seed: int, folder: Path, bench: str | None = None
 ) -> dict[str, Outcome]:
-    plan = make_plan(sequence, bench, DATE)
+    plan = make_plan(sequence, bench or bench_for(sequence), DATE)
     rehearsal, store = prepare_rehearsal(plan.bench, seed), KeyStore(folder / "home")
     outcomes = run(
         Job(

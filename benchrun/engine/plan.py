@@ -18,7 +18,11 @@ from benchrun.evaluate.chain import hookups
 from benchrun.evaluate.procedure import Procedure
 from benchrun.hookup import Hookup
 from benchrun.instruments.dialect import Dialect, load_dialect
-from benchrun.instruments.scalar_dialects import load_generator_dialect, load_spectrum_dialect
+from benchrun.instruments.scalar_dialects import (
+    load_generator_dialect,
+    load_spectrum_dialect,
+    load_supply_dialect,
+)
 from benchrun.record.payload import safe_name
 from benchrun.rf.touchstone import TouchstoneData
 from benchrun.rf.touchstone import read as read_touchstone
@@ -26,7 +30,7 @@ from benchrun.sequence.bench import Bench
 from benchrun.sequence.checks import check_bench, check_kits, check_masks, check_sequence
 from benchrun.sequence.fields import FileModel
 from benchrun.sequence.files import Loaded, read
-from benchrun.sequence.find import find
+from benchrun.sequence.find import find, named
 from benchrun.sequence.fixtures import check_fixtures
 from benchrun.sequence.kit import KitFile
 from benchrun.sequence.loading import read_bytes
@@ -36,7 +40,7 @@ from benchrun.sequence.resolve import step_paths
 from benchrun.sequence.steps import Calibrate, DeEmbed, Judge
 from benchrun.sequence.steps.judge import MaskLimit
 
-__all__ = ["FIXTURE_BYTES", "Named", "Plan", "check_file", "make_plan", "resolve"]
+__all__ = ["FIXTURE_BYTES", "Named", "Plan", "bench_for", "check_file", "make_plan", "resolve"]
 
 FIXTURE_BYTES = 20_000_000
 M = TypeVar("M", bound=BaseModel)
@@ -190,6 +194,37 @@ def make_plan(sequence: str, bench: str, today: datetime.date) -> Plan:
     return Plan(loaded, bench_file, dialect, dialects, procedure, inputs, _digest(inputs))
 
 
+def bench_for(sequence: str) -> str:
+    """The first bench known by name that has every instrument which a sequence needs.
+
+    Parameters
+    ----------
+    sequence
+        Name or path.
+
+    Raises
+    ------
+    InputError
+        If the sequence cannot be read, or no bench has them all.
+    """
+    loaded = read(find("sequence", sequence), Sequence)
+    wanted = set(loaded.model.roles)
+    names = sorted(named("bench", loaded.folder), key=lambda item: (item[0] != "workshop", item[0]))
+    for _, path in names:
+        try:
+            if wanted <= set(read(path, Bench).model.instruments):
+                return str(path)
+        except InputError:
+            continue  # somebody's unfinished bench file is no hindrance here
+    raise InputError(
+        loaded.document.problem(
+            f"needs {', '.join(sorted(wanted))}, and no bench known by name has them all",
+            ("sequence",),
+            "Name one with --bench.",
+        )
+    )
+
+
 def load_dialects(bench: Loaded[Bench], roles: Iterable[str]) -> dict[str, FileModel]:
     """The dialects of a bench's instruments, for those roles that it has.
 
@@ -202,6 +237,7 @@ def load_dialects(bench: Loaded[Bench], roles: Iterable[str]) -> dict[str, FileM
         "analyzer": lambda name, place: load_dialect(name, place=place),
         "generator": load_generator_dialect,
         "spectrum analyzer": load_spectrum_dialect,
+        "supply": load_supply_dialect,
     }
     found: dict[str, FileModel] = {}
     for role, instrument in bench.model.instruments.items():

@@ -27,10 +27,13 @@ class Levels:
         What the generator was set to, ``(k,)``.
     read_dbm
         What was read at each frequency, ``(k, h)``.
+    supply_a
+        Supply current at each level, ``(k,)``; nan without a supply.
     """
 
     source_dbm: FloatArray
     read_dbm: FloatArray
+    supply_a: FloatArray
 
 
 Raw: TypeAlias = TwoPort | Levels
@@ -66,6 +69,7 @@ def encode(f_hz: FloatArray, raw: Raw, comment: str) -> bytes:
         "frequencies_hz": f_hz.tolist(),
         "source_dbm": raw.source_dbm.tolist(),
         "read_dbm": raw.read_dbm.tolist(),
+        "supply_a": [None if np.isnan(a) else a for a in raw.supply_a.tolist()],
     }
     return (json.dumps(table, indent=1) + "\n").encode()
 
@@ -82,7 +86,11 @@ def decode(contents: bytes, name: str) -> Raw:
         return read_touchstone(contents, name).two_port
     try:
         table = json.loads(contents)
-        levels = Levels(np.array(table["source_dbm"], np.float64), np.array(table["read_dbm"], np.float64))
+        levels = Levels(
+            np.array(table["source_dbm"], np.float64),
+            np.array(table["read_dbm"], np.float64),
+            np.array([np.nan if a is None else a for a in table["supply_a"]], np.float64),
+        )
     except (ValueError, KeyError, TypeError) as error:
         raise CouldNotCheck(f"{name} is no table of levels: {error}") from error
     if levels.read_dbm.ndim != 2 or len(levels.read_dbm) != len(levels.source_dbm):

@@ -44,14 +44,23 @@ class SignalGenerator:
         self.session.set(*(m.format(**values) for m in self.dialect.tone))
         self.session.set(*self.dialect.source_on)
 
+    def off(self) -> None:
+        """Output off.
+
+        Raises
+        ------
+        InstrumentError, TransportError, ReplyError
+        """
+        self.session.set(*self.dialect.source_off)
+
     def make_safe(self) -> str:
         """Output off, as far as the line allows; empty, or what is left on and what to do by hand."""
         try:
-            self.session.set(*self.dialect.source_off)
+            self.off()
         except BenchError:
             try:
                 self.session.clear()
-                self.session.set(*self.dialect.source_off)
+                self.off()
             except BenchError as error:
                 return f"the output of {self.session.name} may still be on ({error}): switch it off by hand"
         return ""

@@ -11,7 +11,14 @@ from benchrun.errors import Problem
 from benchrun.instruments.dialect import Form, Messages, Words, find_dialect, template
 from benchrun.sequence.fields import FileModel, Listed, Name
 
-__all__ = ["GeneratorDialect", "SpectrumDialect", "load_generator_dialect", "load_spectrum_dialect"]
+__all__ = [
+    "GeneratorDialect",
+    "SpectrumDialect",
+    "SupplyDialect",
+    "load_generator_dialect",
+    "load_spectrum_dialect",
+    "load_supply_dialect",
+]
 
 _LENGTH = Field(min_length=1, max_length=200)
 _FOLDER = Path(__file__).parent / "dialects"
@@ -52,6 +59,30 @@ class SpectrumDialect(FileModel):
     form: Form
     condition: Words
     overload: int = Field(ge=0, le=14)
+
+
+FeedPart = Annotated[str, template(("voltage_v", "current_a")), _LENGTH]
+FeedMessages = Annotated[tuple[FeedPart, ...], Listed]
+
+
+class SupplyDialect(FileModel):
+    """How one family of DC supplies words each request; ``{voltage_v}`` and ``{current_a}`` are filled in."""
+
+    dialect: Name
+    edition: Annotated[int, Field(ge=1, le=1)]
+    title: str
+    preset: Messages
+    feed: FeedMessages = Field(min_length=1)
+    source_on: Messages = Field(alias="source on")
+    source_off: Messages = Field(alias="source off")
+    tripped: Words
+    voltage: Words
+    current: Words
+
+
+def load_supply_dialect(name: str, place: Problem | None = None) -> SupplyDialect:
+    """The dialect of a supply; raises InputError where there is none."""
+    return find_dialect(name, SupplyDialect, _FOLDER / "supply", place)
 
 
 def load_generator_dialect(name: str, place: Problem | None = None) -> GeneratorDialect:

@@ -24,11 +24,14 @@ class SpectrumAnalyzer:
         The conversation.
     dialect
         How this family words requests.
+    most_dbm
+        Greatest level that its range can be set to.
     """
 
-    def __init__(self, session: Session, dialect: SpectrumDialect) -> None:
+    def __init__(self, session: Session, dialect: SpectrumDialect, most_dbm: float = 20.0) -> None:
         self.session = session
         self.dialect = dialect
+        self.most_dbm = most_dbm
 
     def preset(self) -> None:
         """Known state.
@@ -62,7 +65,7 @@ class SpectrumAnalyzer:
             "centre_hz": repr(float(frequency_hz)),
             "span_hz": repr(_SPAN_IN_BANDWIDTHS * bandwidth_hz),
             "bandwidth_hz": repr(float(bandwidth_hz)),
-            "reference_dbm": repr(float(reference_dbm)),
+            "reference_dbm": repr(min(float(reference_dbm), self.most_dbm)),
         }
         self.session.set(*(m.format(**values) for m in words.window))
         self.session.set(*words.sweep, deadline_s=_DEADLINE_S)

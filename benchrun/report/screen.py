@@ -12,7 +12,7 @@ from rich.text import Text
 
 from benchrun.engine import events
 from benchrun.evaluate.judgement import JudgedFigure
-from benchrun.report.words import amount, duration, limit, outside
+from benchrun.report.words import amount, difference, duration, limit, outside
 
 if TYPE_CHECKING:
     from benchrun.engine.run import Outcome
@@ -133,8 +133,8 @@ class Screen:
                 f.name,
                 amount(f.value, f.unit),
                 limit(f),
-                amount(f.margin, f.unit),
-                amount(f.uncertainty, f.unit),
+                difference(f.margin, f.unit),
+                difference(f.uncertainty, f.unit),
                 amount(f.at_hz, "Hz"),
                 Text(f.conclusion, style="" if f.conclusion == "pass" else "bold reverse"),
             )

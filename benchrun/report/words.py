@@ -7,9 +7,9 @@ import math
 from benchrun.evaluate.judgement import JudgedFigure
 from benchrun.quantity import Dimension, render
 
-__all__ = ["amount", "duration", "limit", "outside"]
+__all__ = ["amount", "difference", "duration", "limit", "outside"]
 
-_DIMENSIONS = {"Hz": Dimension.FREQUENCY, "s": Dimension.TIME}
+_DIMENSIONS = {"Hz": Dimension.FREQUENCY, "s": Dimension.TIME, "A": Dimension.CURRENT}
 
 
 def amount(value: float | None, unit: str, places: int = 2) -> str:
@@ -28,6 +28,17 @@ def amount(value: float | None, unit: str, places: int = 2) -> str:
     return text if unit == "1" else f"{text} {unit}"
 
 
+def difference(value: float | None, unit: str, places: int = 2) -> str:
+    """A distance between two values: of two levels in dBm it is in dB.
+
+    Examples
+    --------
+    >>> difference(2.5, "dBm"), difference(2.5, "A")
+    ('2.50 dB', '2.5 A')
+    """
+    return amount(value, "dB" if unit == "dBm" else unit, places)
+
+
 def limit(figure: JudgedFigure) -> str:
     """The limit with its side: ``at most 0.6 dB``."""
     if figure.unit in _DIMENSIONS:
@@ -42,9 +53,13 @@ def outside(figure: JudgedFigure) -> str:
     where = f" at {amount(figure.at_hz, 'Hz')}" if figure.at_hz is not None else ""
     said = f"{figure.name} is {amount(figure.value, figure.unit, 3)}{where}"
     if figure.margin < 0:
-        return f"{said}, {amount(-figure.margin, figure.unit, 3)} beyond {limit(figure)}"
-    room = f"only {amount(figure.margin, figure.unit, 3)} inside {limit(figure)}"
-    why = f" with U = {amount(figure.uncertainty, figure.unit, 3)}" if figure.uncertainty is not None else ""
+        return f"{said}, {difference(-figure.margin, figure.unit, 3)} beyond {limit(figure)}"
+    room = f"only {difference(figure.margin, figure.unit, 3)} inside {limit(figure)}"
+    why = (
+        f" with U = {difference(figure.uncertainty, figure.unit, 3)}"
+        if figure.uncertainty is not None
+        else ""
+    )
     return f"{said}, {room}{why}{'; ' + figure.remark if figure.remark else ''}"
 
 

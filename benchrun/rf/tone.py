@@ -16,36 +16,34 @@ __all__ = ["Tone"]
 class Tone:
     """What a spectrum analyzer read behind a unit that a generator drives.
 
+    The spectrum analyzer is the reference of level: what it reads through a thru in the unit's place is the
+    unit's input level, whatever the generator was set to and the cables lose before it.
+
     Parameters
     ----------
-    source_dbm
-        Levels that the generator was set to, ``(..., k)``, increasing.
-    straight_dbm
-        Carrier read with the unit replaced by a thru, ``(..., k)``.
+    input_dbm
+        Carrier read with the unit replaced by a thru, ``(..., k)``, increasing.
     read_dbm
         Carrier and harmonics read behind the unit, ``(..., k, h)``; harmonic ``h`` in column ``h - 1``.
+    supply_a
+        Supply current at each level, ``(..., k)``; nan where there is no supply.
 
     Examples
     --------
     >>> import numpy as np
-    >>> tone = Tone(np.array([-10.0]), np.array([-10.5]), np.array([[5.5, -30.0]]))
-    >>> float(tone.gain_db[0]), float(tone.output_dbm[0])
-    (16.0, 6.0)
+    >>> tone = Tone(np.array([-10.5]), np.array([[5.5, -30.0]]), np.array([0.082]))
+    >>> float(tone.gain_db[0]), float(tone.harmonics_db[0, 0])
+    (16.0, -35.5)
     """
 
-    source_dbm: FloatArray
-    straight_dbm: FloatArray
+    input_dbm: FloatArray
     read_dbm: FloatArray
+    supply_a: FloatArray
 
     @property
     def gain_db(self) -> FloatArray:
         """Carrier behind the unit less that behind the thru, ``(..., k)``: what is around cancels."""
-        return np.asarray(self.read_dbm[..., 0] - self.straight_dbm)
-
-    @property
-    def output_dbm(self) -> FloatArray:
-        """Level at the unit's output, ``(..., k)``: the source's level plus the gain."""
-        return np.asarray(self.source_dbm + self.gain_db)
+        return np.asarray(self.read_dbm[..., 0] - self.input_dbm)
 
     @property
     def harmonics_db(self) -> FloatArray:
@@ -54,4 +52,4 @@ class Tone:
 
     def map(self, function: Callable[[FloatArray], FloatArray]) -> Tone:
         """Apply one function to each array."""
-        return Tone(function(self.source_dbm), function(self.straight_dbm), function(self.read_dbm))
+        return Tone(function(self.input_dbm), function(self.read_dbm), function(self.supply_a))

@@ -14,7 +14,7 @@ from benchrun.uncertainty.residual import DECIBEL_LOSS, DECIBEL_RIPPLE, Residual
 __all__ = ["Bench", "Instrument", "Port", "Range", "Role", "Uncertainty"]
 
 
-Role: TypeAlias = Literal["analyzer", "generator", "spectrum analyzer"]
+Role: TypeAlias = Literal["analyzer", "generator", "spectrum analyzer", "supply"]
 """What an instrument does on a bench; ``analyzer`` is the network analyzer."""
 
 

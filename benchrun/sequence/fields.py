@@ -13,6 +13,7 @@ from benchrun.quantity import Dimension, parse, parse_range
 __all__ = [
     "LABEL",
     "Capacitance",
+    "Current",
     "Decibel",
     "Delay",
     "Duration",
@@ -93,6 +94,7 @@ Power = Annotated[float, Field(ge=-200, le=100), _value(Dimension.POWER), _schem
 Decibel = Annotated[float, Field(ge=-300, le=300), _value(Dimension.RATIO), _schema(Dimension.RATIO)]
 Duration = Annotated[float, Field(gt=0), _value(Dimension.TIME), _schema(Dimension.TIME)]
 Delay = Annotated[float, Field(ge=0), _value(Dimension.TIME), _schema(Dimension.TIME)]
+Current = Annotated[float, Field(gt=0), _value(Dimension.CURRENT), _schema(Dimension.CURRENT)]
 Voltage = Annotated[float, _value(Dimension.VOLTAGE), _schema(Dimension.VOLTAGE)]
 Impedance = Annotated[float, Field(gt=0), _value(Dimension.IMPEDANCE), _schema(Dimension.IMPEDANCE)]
 Capacitance = Annotated[float, _value(Dimension.CAPACITANCE), _schema(Dimension.CAPACITANCE)]

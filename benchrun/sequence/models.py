@@ -12,6 +12,7 @@ from pydantic import BeforeValidator, Discriminator, Field, Tag, create_model, m
 from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.fields import (
     LABEL,
+    Current,
     Decibel,
     Duration,
     FileModel,
@@ -47,6 +48,13 @@ class Withstands(FileModel):
     dc: Voltage = 0.0
 
 
+class Feed(FileModel):
+    """DC for an active unit."""
+
+    voltage: Voltage
+    current: Current = Field(description="limit at which the supply trips")
+
+
 class Fixture(FileModel):
     """What the unit sits in; names are the items that hands are asked to connect."""
 
@@ -78,6 +86,7 @@ class Unit(FileModel):
     withstands: Withstands
     gain: Decibel = Field(default=0.0, description="the unit's greatest gain")
     fixture: Fixture | None = None
+    supply: Feed | None = Field(default=None, description="DC that the unit needs to work")
 
 
 class SweepSetup(FileModel):
@@ -176,7 +185,8 @@ class Sequence(FileModel):
     @property
     def roles(self) -> tuple[str, ...]:
         """Instruments that the steps need, in the order of first use."""
-        return tuple(dict.fromkeys(role for step in self.steps for role in step.roles))
+        fed = ("supply",) if self.unit.supply is not None else ()
+        return tuple(dict.fromkeys((*(role for step in self.steps for role in step.roles), *fed)))
 
     @property
     def caution_texts(self) -> tuple[str, ...]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Protocol, TypeVar
@@ -18,6 +19,7 @@ from benchrun.hookup import Hookup
 from benchrun.instruments.analyzer import NetworkAnalyzer, SweepSettings
 from benchrun.instruments.generator import SignalGenerator
 from benchrun.instruments.spectrum import SpectrumAnalyzer
+from benchrun.instruments.supply import Supply
 from benchrun.sequence.steps import StepModel
 
 __all__ = ["AtWork", "Execution", "carry_out"]
@@ -55,6 +57,47 @@ class AtWork:
     standing: Hookup | None = None
     generator: SignalGenerator | None = None
     spectrum: SpectrumAnalyzer | None = None
+    supply: Supply | None = None
+
+    def connect(self, hookup: Hookup) -> None:
+        """Have a connection made, if it does not stand; a unit is fed only while it is connected.
+
+        Raises
+        ------
+        BenchError
+            If the supply does not do what it should.
+        Stopped
+            If the operator ends the run.
+        """
+        if hookup == self.standing:
+            return
+        if self.supply is not None and self.supply.on:
+            self.supply.off()
+            self.emit(Noted(text="supply off"))
+        self.emit(Prompted(hookup=hookup.text))
+        self.operator.connect(hookup)
+        self.standing = hookup
+        feed = self.procedure.sequence.unit.supply
+        if (
+            self.supply is not None
+            and feed is not None
+            and any("unit" in c.items for c in hookup.connections)
+        ):
+            drawn = self.supply.feed(feed.voltage, feed.current)
+            self.emit(Noted(text=f"supply on: {feed.voltage:g} V, {1e3 * drawn:.1f} mA"))
+
+    def drawn_a(self) -> float:
+        """Supply current now, in ampere; nan without a supply.
+
+        Raises
+        ------
+        InvalidMeasurement
+            If the supply tripped.
+        """
+        feed = self.procedure.sequence.unit.supply
+        if self.supply is None or feed is None or not self.supply.on:
+            return math.nan
+        return self.supply.current(feed.voltage, feed.current)
 
 
 class Execution(Protocol[S]):
@@ -96,10 +139,7 @@ def carry_out(step: StepModel, work: AtWork, last: Callable[[StepModel, AtWork],
         settings = SweepSettings(setup.grid(), spacing, setup.bandwidth, setup.power, setup.averages)
         analyzer.set_up(settings)
         for hookup in needed:
-            if hookup != work.standing:
-                work.emit(Prompted(hookup=hookup.text))
-                work.operator.connect(hookup)
-                work.standing = hookup
+            work.connect(hookup)
             if setup.settle:
                 work.clock.wait(setup.settle)
             raw = analyzer.sweep().raw

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from benchrun.engine.events import Prompted, ReadingTaken
+from benchrun.engine.events import ReadingTaken
 from benchrun.engine.kept import Reading
 from benchrun.engine.steps.base import AtWork
 from benchrun.evaluate.chain import apply, hookups
@@ -13,6 +13,9 @@ from benchrun.quantity import Dimension, render
 from benchrun.sequence.steps import Tone
 
 __all__ = ["ToneExecution"]
+
+_HEADROOM_DB = 3.0
+"""How far above the level expected the spectrum analyzer's range is set."""
 
 
 class ToneExecution:
@@ -33,23 +36,19 @@ class ToneExecution:
         levels, frequencies = step.grid_dbm(), step.frequencies()
         gain = work.procedure.sequence.unit.gain
         for hookup in hookups(step, work.procedure):
-            if hookup != work.standing:
-                work.emit(Prompted(hookup=hookup.text))
-                work.operator.connect(hookup)
-                work.standing = hookup
+            work.connect(hookup)
             # Of the thru only the carrier is wanted: the source's own harmonics are no result.
-            wanted = frequencies if "unit" in hookup.text else frequencies[:1]
-            read = np.empty((len(levels), len(wanted)))
+            through_unit = any("unit" in c.items for c in hookup.connections)
+            wanted = frequencies if through_unit else frequencies[:1]
+            expected_db = _HEADROOM_DB + (max(gain, 0.0) if through_unit else 0.0)
+            read, drawn = np.empty((len(levels), len(wanted))), np.empty(len(levels))
             for i, level in enumerate(levels):
                 generator.tone(step.at, float(level))
                 for j, frequency in enumerate(wanted):
-                    read[i, j] = spectrum.level(
-                        float(frequency), step.bandwidth, float(level) + max(gain, 0.0) + 3.0
-                    )
-            left = generator.make_safe()
-            if left:
-                raise RuntimeError(left)
-            raw = Levels(levels, read)
+                    read[i, j] = spectrum.level(float(frequency), step.bandwidth, float(level) + expected_db)
+                drawn[i] = work.drawn_a()
+            generator.off()
+            raw = Levels(levels, read, drawn)
             reading = work.kept.add(Reading.of(step.name, hookup.text, wanted, raw, work.clock.seconds()))
             work.emit(
                 ReadingTaken(step=step.name, hookup=hookup.text, points=read.size, sha256=reading.sha256)

@@ -49,7 +49,7 @@ class CalibrateArithmetic:
             raw = turned_round(raw, raw)
         agree(state, step.name, _correct(terms, raw, ports), examiner(raw))
         _keep_heap()
-        # Declared residual terms are those of a full correction: they say nothing of a mere normalization, nor
+        # Declared residual terms are those of a full correction: they say nothing of a normalization, nor
         # of a method whose idle ports nobody read.
         full = method.name != "response" and (not method.without_switch_terms or SWITCH_READING in swept)
         declared = procedure.residual.declared and full

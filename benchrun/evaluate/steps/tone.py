@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+import numpy as np
+
 from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.network import Network
 from benchrun.evaluate.procedure import Procedure
@@ -38,9 +40,14 @@ class ToneArithmetic:
                 f"at most {_WEAK_DB:g} dB make sense.",
                 "Check that the source is on, and the cables and connections.",
             )
-        nominal = ToneResult(step.grid_dbm(), thru.read_dbm[:, 0], unit.read_dbm)
+        if np.any(np.diff(thru.read_dbm[:, 0]) <= 0):
+            raise InvalidMeasurement(
+                "Through the thru the level does not rise with the source's.",
+                "The spectrum analyzer or the source is at its end: lower the levels.",
+            )
+        nominal = ToneResult(thru.read_dbm[:, 0], unit.read_dbm, unit.supply_a)
         terms = state.procedure.level
         varied = terms.vary(nominal) if terms.declared else None
-        systematic = 0 if varied is None else len(varied.source_dbm)
+        systematic = 0 if varied is None else len(varied.input_dbm)
         state.networks[step.name] = Network(step.frequencies(), nominal, varied, systematic)
         state.kinds[step.name] = "tone"

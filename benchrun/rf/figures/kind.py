@@ -92,6 +92,8 @@ class FigureKind:
         Whether a figure of frequency is a distance between two, so that its limits lie nowhere in a sweep.
     domain
         ``"sweep"``: taken from S-parameters; ``"tone"``: from levels of a tone.
+    sides
+        Limits that make sense for it.
     between
         ``(f_hz, network, where_hz, **parameters) -> (..., k)`` in place of ``trace``, for a trace figure
         that can be taken between samples; a ``trace`` is interpolated there.
@@ -109,6 +111,7 @@ class FigureKind:
     local: bool = True
     width: bool = False
     domain: str = "sweep"
+    sides: tuple[str, ...] = ("at least", "at most")
     between: Trace | None = None
 
     def band(self, parameters: Mapping[str, Any]) -> tuple[float, float] | None:

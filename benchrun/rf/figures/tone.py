@@ -15,16 +15,16 @@ _DROP = Parameter("value", Dimension.RATIO, default=1.0)
 
 
 def compression(tone: Tone, drop: float) -> FloatArray:
-    """Source level at which the gain has first fallen by ``drop`` dB from that at the lowest level.
+    """Input level at which the gain has first fallen by ``drop`` dB from that at the lowest level.
 
     Between the two levels around the crossing the gain is taken as linear in dB over dBm.
 
     Returns
     -------
     numpy.ndarray
-        In dBm, ``(...,)``; nan where the gain does not fall that far.
+        In dBm, ``(...,)``; the highest level where the gain does not fall that far: the true value is above.
     """
-    gain, source = tone.gain_db, np.broadcast_to(tone.source_dbm, tone.gain_db.shape)
+    gain, level = tone.gain_db, np.broadcast_to(tone.input_dbm, tone.gain_db.shape)
     threshold = gain[..., :1] - drop
     below = gain <= threshold
     right = np.argmax(below, -1)[..., np.newaxis]
@@ -35,8 +35,8 @@ def compression(tone: Tone, drop: float) -> FloatArray:
 
     g0, g1 = take(gain, left), take(gain, right)
     weight = np.clip((g0 - threshold) / np.where(g0 == g1, 1.0, g0 - g1), 0.0, 1.0)
-    crossing = take(source, left) + weight * (take(source, right) - take(source, left))
-    return np.where(below.any(-1), crossing[..., 0], np.nan)
+    crossing = take(level, left) + weight * (take(level, right) - take(level, left))
+    return np.where(below.any(-1), crossing[..., 0], level[..., -1])
 
 
 def _carrier(f_hz: FloatArray, shape: tuple[int, ...]) -> FloatArray:
@@ -49,7 +49,7 @@ def _gain(f_hz: FloatArray, tone: Tone) -> Found:
 
 
 def _output(f_hz: FloatArray, tone: Tone) -> Found:
-    value = tone.output_dbm[..., -1]
+    value = tone.read_dbm[..., -1, 0]
     return Found(value, _carrier(f_hz, value.shape))
 
 
@@ -68,14 +68,36 @@ def _input_compression(f_hz: FloatArray, tone: Tone, drop: float) -> Found:
 
 
 def _output_compression(f_hz: FloatArray, tone: Tone, drop: float) -> Found:
-    value = compression(tone, drop) + tone.gain_db[..., 0] - drop
+    level = compression(tone, drop)[..., np.newaxis]
+    # At the crossing the gain is that at the lowest level less the drop; without one it is what was read.
+    reached = level >= tone.input_dbm[..., -1:]
+    gain = np.where(reached, tone.gain_db[..., -1:], tone.gain_db[..., :1] - drop)
+    value = (level + gain)[..., 0]
     return Found(value, _carrier(f_hz, value.shape))
 
 
 def _kind(
-    name: str, dimension: Dimension, meaning: str, scalar: object, **parameters: Parameter
+    name: str,
+    dimension: Dimension,
+    meaning: str,
+    scalar: object,
+    sides: tuple[str, ...] = ("at least", "at most"),
+    **parameters: Parameter,
 ) -> FigureKind:
-    return FigureKind(name, dimension, meaning, parameters, ports=2, scalar=scalar, domain="tone")  # type: ignore[arg-type]
+    return FigureKind(
+        name,
+        dimension,
+        meaning,
+        parameters,
+        scalar=scalar,  # type: ignore[arg-type]
+        domain="tone",
+        sides=sides,
+    )
+
+
+def _supply(f_hz: FloatArray, tone: Tone) -> Found:
+    value = tone.supply_a[..., -1]
+    return Found(value, _carrier(f_hz, value.shape))
 
 
 KINDS = (
@@ -85,7 +107,7 @@ KINDS = (
         "carrier behind the unit less carrier behind a thru, at the lowest level",
         _gain,
     ),
-    _kind("output level", Dimension.POWER, "source level plus gain, at the highest level", _output),
+    _kind("output level", Dimension.POWER, "carrier behind the unit, at the highest level", _output),
     _kind(
         "harmonic level",
         Dimension.RATIO,
@@ -95,15 +117,22 @@ KINDS = (
     _kind(
         "input compression",
         Dimension.POWER,
-        "source level at which the gain has first fallen by `drop` from that at the lowest level",
+        "input level at which the gain has first fallen by `drop` from that at the lowest level; "
+        "the highest level tested where it does not fall that far",
         _input_compression,
+        sides=("at least",),
         drop=_DROP,
     ),
     _kind(
         "output compression",
         Dimension.POWER,
-        "output level where the gain has first fallen by `drop` from that at the lowest level",
+        "output level where the gain has first fallen by `drop` from that at the lowest level; "
+        "the highest level tested where it does not fall that far",
         _output_compression,
+        sides=("at least",),
         drop=_DROP,
+    ),
+    _kind(
+        "supply current", Dimension.CURRENT, "current drawn from the supply, at the highest level", _supply
     ),
 )

@@ -146,6 +146,9 @@ class FigureLimit(FileModel):
                 raise trouble(f"{self.figure} needs `{key}`: {kind.meaning}")
         if "over" in kind.parameters and "at" in kind.parameters and (self.over is None) == (self.at is None):
             raise trouble(f"{self.figure} needs `over` (a band) or `at` (a frequency), one of them")
+        for side in ("at most", "at least"):
+            if getattr(self, side.replace(" ", "_")) is not None and side not in kind.sides:
+                raise trouble(f"`{side}` makes no sense for {self.figure}: {kind.meaning}", side)
         if self.at_most is None and self.at_least is None:
             raise trouble(f"{self.figure} has neither `at most` nor `at least`")
         bounds = {key: self._bound(key) for key in ("at least", "at most")}
