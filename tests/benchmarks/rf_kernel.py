@@ -1,8 +1,8 @@
 """What many draws of a calibration cost: solve, correct and de-embed, against looping scikit-rf.
 
 1000 draws of 1601 points, a new noise on every reading of every draw, in chunks that stay in the
-processor's cache; mean and variance are kept, as an uncertainty needs them. Both are timed in this one run; scikit-rf on a
-few draws, since it takes the same time for each.
+processor's cache; mean and variance are kept, as an uncertainty needs them. Both are
+timed in this one run; scikit-rf on a few draws, since it takes the same time for each.
 
 Usage: python tests/benchmarks/rf_kernel.py [DRAWS [POINTS]]
 """
