@@ -47,4 +47,5 @@ def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure
         noise_seed,
         bench.uncertainty.level_terms,
         bench.scalar_ports,
+        bench.uncertainty.noise_at,
     )

@@ -9,7 +9,8 @@ from benchrun.hookup import Connection, Hookup
 from benchrun.rf.kit import Kit
 from benchrun.rf.masks import Mask
 from benchrun.rf.touchstone import TouchstoneData
-from benchrun.sequence.models import Sequence
+from benchrun.sequence.bench import NoiseAt
+from benchrun.sequence.models import Sequence, SweepSetup
 from benchrun.uncertainty.level import LevelTerms
 from benchrun.uncertainty.residual import ResidualTerms
 
@@ -31,6 +32,8 @@ class Procedure:
         By the name that the sequence uses.
     residual
         Declared residual terms of the bench.
+    noise_at
+        Conditions of the declared noise; None: it is taken to hold as it stands.
     level
         Declared uncertainty of levels.
     scalar_ports
@@ -47,6 +50,13 @@ class Procedure:
     noise_seed: int = NOISE_SEED
     level: LevelTerms = LevelTerms()
     scalar_ports: tuple[int, int] = (3, 4)
+    noise_at: NoiseAt | None = None
+
+    def residual_of(self, setup: SweepSetup) -> ResidualTerms:
+        """The residual terms under a sweep's bandwidth, level and averaging."""
+        if self.noise_at is None:
+            return self.residual
+        return self.residual.scaled(*self.noise_at.factors(setup.bandwidth, setup.power, setup.averages))
 
     def unit_hookup(self, port: int, turned: bool = False) -> Hookup:
         """How the unit is connected: in its fixture, between the ports or on ``port`` alone.

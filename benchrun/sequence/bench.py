@@ -2,11 +2,21 @@
 
 from __future__ import annotations
 
+import math
 from typing import Annotated, Literal, TypeAlias
 
 from pydantic import BeforeValidator, Field, model_validator
 
-from benchrun.sequence.fields import FileModel, FrequencyRange, Listed, Name, PowerRange, trouble
+from benchrun.sequence.fields import (
+    FileModel,
+    Frequency,
+    FrequencyRange,
+    Listed,
+    Name,
+    Power,
+    PowerRange,
+    trouble,
+)
 from benchrun.sequence.models import Withstands
 from benchrun.uncertainty.level import LEVEL_TERMS, LevelTerms
 from benchrun.uncertainty.residual import DECIBEL_LOSS, DECIBEL_RIPPLE, ResidualTerms
@@ -70,6 +80,22 @@ def _level(value: object) -> object:
 _KNOWN = DECIBEL_LOSS + DECIBEL_RIPPLE
 
 
+class NoiseAt(FileModel):
+    """Conditions of the declared noise; a sweep under others has another noise.
+
+    The floor grows with the root of the bandwidth and falls with the source level in dB, trace noise grows
+    with the root of the bandwidth, and averaging lowers both by its root (common practice).
+    """
+
+    bandwidth: Frequency = Field(gt=0)
+    power: Power
+
+    def factors(self, bandwidth_hz: float, power_dbm: float, averages: int) -> tuple[float, float]:
+        """What floor and trace noise are multiplied by in a sweep."""
+        trace = math.sqrt(bandwidth_hz / self.bandwidth / averages)
+        return trace * 10.0 ** ((self.power - power_dbm) / 20.0), trace
+
+
 class Uncertainty(FileModel):
     """Declared uncertainty of the bench after calibration."""
 
@@ -78,6 +104,9 @@ class Uncertainty(FileModel):
         json_schema_extra={"propertyNames": {"enum": list(_KNOWN)}, "examples": [{"directivity": "44 dB"}]},
     )
 
+    noise_at: NoiseAt | None = Field(
+        default=None, alias="noise at", description="conditions under which noise floor and trace noise hold"
+    )
     level: Annotated[dict[str, str], BeforeValidator(_level)] = Field(
         default_factory=dict,
         description="standard uncertainties of generator and spectrum analyzer",

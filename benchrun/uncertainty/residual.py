@@ -14,7 +14,7 @@ square root of two (U-shaped, JCGM 101:2008 table 1, from memory). Noise is draw
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, fields
+from dataclasses import dataclass, fields, replace
 
 import numpy as np
 
@@ -87,6 +87,10 @@ class ResidualTerms:
                     f"{name!r} is no residual term; known are {', '.join(DECIBEL_LOSS + DECIBEL_RIPPLE)}"
                 )
         return cls(**values)
+
+    def scaled(self, floor: float, trace: float) -> ResidualTerms:
+        """The same terms with other noise: floor and trace noise multiplied, linear."""
+        return replace(self, noise_floor=self.noise_floor * floor, trace_noise=self.trace_noise * trace)
 
     @property
     def declared(self) -> bool:

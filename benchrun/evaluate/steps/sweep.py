@@ -51,7 +51,8 @@ class SweepArithmetic:
             nominal: Data = raw if procedure.sequence.unit.ports == 2 else raw.s11
             state.networks[step.name], state.kinds[step.name] = Network(grid, nominal), "uncorrected"
             return
-        calibration, residual = state.calibrations[step.with_], procedure.residual
+        calibration = state.calibrations[step.with_]
+        residual = procedure.residual_of(procedure.sequence.sweep_of(step))
         nominal = correct(calibration.terms, raw, calibration.ports)
         agree(state, step.name, nominal, calibration.examiner(raw))
         varied, systematic = None, 0
