@@ -12,9 +12,11 @@ from dataclasses import dataclass, field, replace
 
 import numpy as np
 
+from benchrun.errors import InvalidMeasurement
+from benchrun.rf.interpolation import resample
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
-__all__ = ["Kit", "Offset", "Standard"]
+__all__ = ["Kit", "Measured", "Offset", "Standard"]
 
 _GHZ = 1e9
 
@@ -175,6 +177,83 @@ class Standard:
         return TwoPort(s11, s21, s21, s11)
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Measured:
+    """A standard by its own measured S-parameters instead of a model.
+
+    Parameters
+    ----------
+    kind
+        As for :class:`Standard`.
+    f_hz
+        ``(k,)``, increasing.
+    data
+        Reflection ``(k,)``, or a :class:`TwoPort` for a thru or line, in ``z0_ohm``.
+    z0_ohm
+        Reference impedance of ``data``; the system's must be the same.
+    uncertainty
+        Standard uncertainty of a complex value, by ``"reflection"``; linear, each of real and imaginary part.
+    """
+
+    kind: str
+    f_hz: FloatArray
+    data: ComplexArray | TwoPort
+    z0_ohm: float = 50.0
+    uncertainty: Mapping[str, float] = field(default_factory=dict)
+
+    @property
+    def joins(self) -> bool:
+        """Whether it stands between two ports."""
+        return isinstance(self.data, TwoPort)
+
+    def reflection(
+        self, f_hz: FloatArray, zr_ohm: float = 50.0, deltas: Mapping[str, float | FloatArray] | None = None
+    ) -> ComplexArray:
+        """Measured reflection at ``f_hz``, by a polynomial between the measured points.
+
+        Parameters
+        ----------
+        f_hz
+            ``(f,)``, within the measured range.
+        zr_ohm
+            Reference impedance, that of the data.
+        deltas
+            ``"reflection"``: departure, complex, scalar or ``(d, 1)``.
+
+        Raises
+        ------
+        InvalidMeasurement
+            Beyond the measured range: nothing is made up there.
+        ValueError
+            For a two-port standard, or in another impedance.
+        """
+        if isinstance(self.data, TwoPort):
+            raise ValueError(f"a {self.kind} has no single reflection")
+        self._refuse(f_hz, zr_ohm)
+        moved = np.asarray((deltas or {}).get("reflection", 0.0))
+        return np.asarray(resample(self.f_hz, self.data, f_hz) + moved)
+
+    def two_port(
+        self, f_hz: FloatArray, zr_ohm: float = 50.0, deltas: Mapping[str, float | FloatArray] | None = None
+    ) -> TwoPort:
+        """Measured S-parameters of a thru or line at ``f_hz``; raises as :meth:`reflection` does."""
+        if not isinstance(self.data, TwoPort):
+            raise ValueError(f"a {self.kind} does not join two ports")
+        self._refuse(f_hz, zr_ohm)
+        return self.data.map(lambda plane: resample(self.f_hz, plane, f_hz))
+
+    def _refuse(self, f_hz: FloatArray, zr_ohm: float) -> None:
+        if zr_ohm != self.z0_ohm:
+            raise ValueError(f"measured in {self.z0_ohm:g} ohm, asked for in {zr_ohm:g} ohm")
+        low, high = float(self.f_hz[0]), float(self.f_hz[-1])
+        if f_hz[0] < low * (1 - 1e-12) or f_hz[-1] > high * (1 + 1e-12):
+            raise InvalidMeasurement(
+                f"The {self.kind} was measured from {low / 1e6:.6g} MHz to {high / 1e6:.6g} MHz; the "
+                f"sweep goes from {f_hz[0] / 1e6:.6g} MHz to {f_hz[-1] / 1e6:.6g} MHz.",
+                "Narrow the sweep, or use a kit that was measured over it.",
+            )
+
+
 @dataclass(frozen=True, slots=True)
 class Kit:
     """The standards that belong together in one box.
@@ -192,13 +271,13 @@ class Kit:
     """
 
     name: str
-    standards: Mapping[str, Standard]
+    standards: Mapping[str, Standard | Measured]
     low_hz: float = 0.0
     high_hz: float = np.inf
     z0_ohm: float = 50.0
     serial: str = ""
     connector: str = ""
 
-    def with_standard(self, name: str, standard: Standard) -> Kit:
+    def with_standard(self, name: str, standard: Standard | Measured) -> Kit:
         """Copy the kit with one standard replaced."""
         return replace(self, standards={**self.standards, name: standard})

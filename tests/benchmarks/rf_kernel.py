@@ -187,6 +187,15 @@ def theirs(setting: Setting, draws: int) -> float:
     return seconds / draws
 
 
+def _random_ns() -> float:
+    """Nanoseconds for one normal number: tells a busy machine from a quiet one."""
+    random, buffer = np.random.Generator(np.random.SFC64(1)), np.empty(10_000)
+    start = time.perf_counter()
+    for _ in range(100):
+        random.standard_normal(out=buffer)
+    return (time.perf_counter() - start) * 1e3
+
+
 def peak_mb() -> float:
     """Greatest resident memory of this process so far."""
     return resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024.0
@@ -199,22 +208,22 @@ def main(arguments: list[str], say: Callable[[str], None] = print) -> int:
     # The allocator keeps what it frees from here on; see benchrun.evaluate.steps.calibrate.
     np.empty(30 << 20, np.uint8)
     good = True
-    noise = np.random.Generator(np.random.SFC64(1))
-    start = time.perf_counter()
-    noise.standard_normal(1_000_000)
-    say(f"this machine, now: {(time.perf_counter() - start) * 1e3:.1f} ns for a random number")
+    say(f"this machine, now: {_random_ns():.1f} ns for a random number; a quiet one takes about 7")
     for name in USED:
         setting = Setting(name, points)
         ours(setting, 20)
         before = peak_mb()
+        busy = time.process_time()
         seconds = min(ours(setting, draws)[0] for _ in range(3))
+        busy = (time.process_time() - busy) / 3
         grown = peak_mb() - before
         each = theirs(setting, 4)
         ratio = each * draws / seconds
         allowed = TARGET_S * draws * points / (1000 * 1601)
         good = good and seconds <= allowed and ratio >= TARGET_RATIO and peak_mb() < TARGET_MB
         say(
-            f"{name}: {draws} draws x {points} points in {seconds:.3f} s (at most {allowed:.3f}); scikit-rf "
+            f"{name}: {draws} draws x {points} points in {seconds:.3f} s (at most {allowed:.3f}), "
+            f"{busy:.3f} s of processor time; scikit-rf "
             f"{each * 1e3:.1f} ms a draw: {ratio:.0f} times slower (at least {TARGET_RATIO:.0f}); memory "
             f"{peak_mb():.0f} MB (below {TARGET_MB:.0f}), {grown:.0f} MB of it for the draws"
         )

@@ -109,7 +109,7 @@ def test_exchanged_standards_are_both_named(seed: int, pair: tuple[str, str], po
 
 @pytest.mark.parametrize("seed", [0, 1, 2])
 def test_an_open_for_a_short_shows_before_the_thru_and_in_the_thru(seed: int) -> None:
-    """The thru's sign contradicts it too, also where the ports' own phase cannot (long cables, few points)."""
+    """The thru's sign contradicts it too, even where the ports' own phase cannot (few points)."""
     readings = Bench(seed).readings()
     one, two = "short on port 1", "open on port 1"
     readings[one], readings[two] = readings[two], readings[one]

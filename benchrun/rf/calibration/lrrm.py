@@ -137,6 +137,9 @@ class LineReflectReflectMatch(TwoPortMethod):
         make = Networks(f_hz)
         names = ("short", "open", "load")
         truths = [kit.standards[n].reflection(f_hz, kit.z0_ohm) for n in names]
+        # Told the inductance as well, its fit would start at nothing to add and could not move from there.
+        resistance = ((1.0 + truths[2]) / (1.0 - truths[2])).real
+        truths[2] = np.asarray((resistance - 1.0) / (resistance + 1.0), np.complex128)
         match = readings[Hookup.of("load", 1).text].s11
 
         def fitted(second: ComplexArray) -> Any:
