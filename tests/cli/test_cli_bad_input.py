@@ -76,8 +76,8 @@ BENCHES = {
     "dialect": ("whole-matrix", "whole-matrx", "b.yaml:8:14: there is no dialect 'whole-matrx'. Did you mean 'whole-matrix'?"),
     "rehearsal": ("rehearsal: workshop", "rehearsal: wrkshop", "b.yaml:4:12: there is no simulated bench 'wrkshop'"),
     "no rehearsal": ("rehearsal: workshop\n", "", "b.yaml:1:8: names no simulated bench. Add `rehearsal: NAME` to rehearse on it."),
-    "residual": ("directivity: 42 dB", "directivty: 42 dB", "b.yaml:18:5: 'directivty' is no residual term; known are directivity,"),
-    "residual unit": ("directivity: 42 dB", "directivity: 42", "b.yaml:18:"),
+    "residual": ("directivity: 42 dB", "directivty: 42 dB", "b.yaml:19:5: 'directivty' is no residual term; known are directivity,"),
+    "residual unit": ("directivity: 42 dB", "directivity: 42", "b.yaml:19:"),
 }  # fmt: skip
 
 SERIALS = ["../HF-0001", "/etc/passwd", "HF-0001/..", "HF-1;*RST", "HF-0001\n*RST", ":SYST:PRES", "HF 0001", "", "-", "HF-0001\u202e", "x" * 65]  # fmt: skip
@@ -163,7 +163,7 @@ def test_serial_that_does_not_fit(cli, tmp_path, serial):
     [
         (("rehearse", "filtr.yaml"), "there is no sequence 'filtr.yaml'"),
         (("rehearse", "harmonic-filtr"), "Did you mean 'harmonic-filter'?"),
-        (("rehearse", "filter.yaml", "--bench", "nowhere"), "there is no bench 'nowhere'. Known by name: workshop"),
+        (("rehearse", "filter.yaml", "--bench", "nowhere"), "there is no bench 'nowhere'. Known by name: amplifier, workshop"),
         (("bench", "nowhere"), "there is no bench 'nowhere'"),
         (("keys", "make", "../x"), "'../x' is no name for a key"),
         (("keys", "make", "rehearsal"), "is the name of the key for rehearsals"),
