@@ -7,7 +7,7 @@ from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any
+from typing import Any, Protocol
 
 import yaml
 
@@ -22,7 +22,7 @@ from sim_instruments.scpi.instrument import Instrument
 from sim_instruments.values import number
 from sim_instruments.world import NoSuchItem, World
 
-__all__ = ["BadBench", "SimulatedBench", "load_bench"]
+__all__ = ["BadBench", "Happening", "SimulatedBench", "load_bench"]
 
 _FOLDER = Path(__file__).parent / "benches"
 _LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
@@ -31,6 +31,14 @@ _LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
 
 class BadBench(ValueError):
     """A simulated bench's file makes no sense."""
+
+
+class Happening(Protocol):
+    """A fault on the way, by name."""
+
+    name: str
+    seen: int
+    happened: int
 
 
 @dataclass(frozen=True)
@@ -47,12 +55,15 @@ class SimulatedBench:
         Units that the bench is known for, each with what is to be said of it.
     fixtures
         Nominal jig halves: what their data sheet says, without this specimen's departures.
+    injected
+        Faults put into it, with how often each has had occasion and has happened.
     """
 
     world: World
     instruments: Mapping[str, Instrument]
     serials: Mapping[str, str]
     fixtures: Mapping[str, Part]
+    injected: tuple[Happening, ...] = ()
 
 
 def load_bench(name: str, seed: int, folder: Path = _FOLDER) -> SimulatedBench:

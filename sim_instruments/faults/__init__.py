@@ -11,8 +11,8 @@ from dataclasses import dataclass, replace
 from typing import cast
 
 from sim_instruments.bench import SimulatedBench
-from sim_instruments.faults import answers, conditions, slips
-from sim_instruments.faults.line import FaultyInstrument, FaultyLine, InstrumentFault
+from sim_instruments.faults import answers, conditions, slips, spoilt
+from sim_instruments.faults.line import FaultyInstrument, FaultyLine, InstrumentFault, bare
 from sim_instruments.faults.when import When
 from sim_instruments.hands import Slip
 from sim_instruments.scpi.instrument import Instrument
@@ -62,8 +62,8 @@ _INSTRUMENT: Mapping[str, type[InstrumentFault]] = {
     "restart in mid-sweep": conditions.Restart,
     "line closed": answers.LineClosed,
     "dribbling": answers.Dribbling,
-    "unlock": conditions.Unlock,
-    "overload": conditions.Overload,
+    "unlock": spoilt.Unlock,
+    "overload": spoilt.Overload,
 }
 _HANDS: Mapping[str, Callable[[World], Slip | None]] = {
     "wrong standard": slips.wrong_standard,
@@ -139,7 +139,9 @@ def inject(
     slip = fault.make(bench.world)
     if slip is not None:
         bench.world.hands.slips.append((slip, when))
-    return bench
+    else:
+        when()  # it goes on from the first
+    return replace(bench, injected=(*bench.injected, when))
 
 
 def _into_instruments(
@@ -147,10 +149,15 @@ def _into_instruments(
 ) -> SimulatedBench:
     if resource is not None and resource not in bench.instruments:
         raise ValueError(f"there is no instrument {resource!r}; there are {', '.join(bench.instruments)}")
+    suited = [
+        name
+        for name, instrument in bench.instruments.items()
+        if resource in (None, name) and make().suits(bare(instrument)[0])
+    ]
+    if not suited:
+        raise ValueError(f"no {when.name!r} can come to {resource or 'any instrument of this bench'}")
     changed = {
-        name: cast(Instrument, FaultyInstrument(instrument, make(), when))
-        if resource in (None, name)
-        else instrument
+        name: cast(Instrument, FaultyInstrument(instrument, make(), when)) if name in suited else instrument
         for name, instrument in bench.instruments.items()
     }
-    return replace(bench, instruments=changed)
+    return replace(bench, instruments=changed, injected=(*bench.injected, when))

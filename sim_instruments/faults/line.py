@@ -2,20 +2,24 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from typing import Any
 
 from sim_instruments.faults.when import When
 from sim_instruments.scpi.instrument import Instrument
 from sim_instruments.scpi.line import Line
 
-__all__ = ["FaultyInstrument", "FaultyLine", "InstrumentFault"]
+__all__ = ["FaultyInstrument", "FaultyLine", "InstrumentFault", "bare"]
 
 
 class InstrumentFault:
     """A way in which instruments go wrong. Occasions are answers that it fits, unless it says otherwise."""
 
     once = False
+
+    def suits(self, instrument: Instrument) -> bool:
+        """Whether an instrument of this kind can have it at all."""
+        return True
 
     def attach(self, instrument: Instrument, when: When) -> None:
         """Called when the instrument gets the fault."""
@@ -33,23 +37,24 @@ class InstrumentFault:
 
 
 class FaultyLine(Line):
-    """A line with a fault.
+    """A line with faults.
 
     Parameters
     ----------
     instrument, sink
         As of a line.
-    fault
-        What goes wrong.
-    when
-        Whether it does.
+    faults
+        What goes wrong, each with what says whether it does; the first that happens to a response is the one.
     """
 
     def __init__(
-        self, instrument: Instrument, sink: Callable[[bytes], None] | None, fault: InstrumentFault, when: When
+        self,
+        instrument: Instrument,
+        sink: Callable[[bytes], None] | None,
+        faults: Sequence[tuple[InstrumentFault, When]],
     ) -> None:
         super().__init__(instrument, sink)
-        self.fault, self.when = fault, when
+        self.faults = faults
         self.most = 0
         """Bytes given at a time; 0: as many as are asked for."""
         self.no_end = False
@@ -65,16 +70,21 @@ class FaultyLine(Line):
 
     def _say(self, response: bytes) -> None:
         self.mute = self.no_end = False
-        if self.fault.fits(response, self.instrument) and self.when():
-            self.fault.spoil(self, response, self.when)
-        else:
-            self.say(response)
+        for fault, when in self.faults:
+            if fault.fits(response, self.instrument) and when():
+                fault.spoil(self, response, when)
+                return
+        self.say(response)
+
+    def _watch(self) -> None:
+        for fault, when in self.faults:
+            fault.watch(self, when)
 
     def receive(self, data: bytes, end: bool = False) -> None:
         """Take bytes of program messages."""
         self._release()
         super().receive(data, end)
-        self.fault.watch(self, self.when)
+        self._watch()
 
     def proceed(self, limit_s: float = float("inf")) -> None:
         """Let the world go on; a response held back comes if the wait has an end and is long enough."""
@@ -85,7 +95,7 @@ class FaultyLine(Line):
         self._release()
         if not self.has_output:
             super().proceed(limit_s)
-        self.fault.watch(self, self.when)
+        self._watch()
 
     def _release(self) -> None:
         if self.held_back is not None and self.instrument.world.time_s >= self.held_back[0]:
@@ -108,13 +118,21 @@ class FaultyLine(Line):
         super().clear()
 
 
+def bare(instrument: Instrument) -> tuple[Instrument, tuple[tuple[InstrumentFault, When], ...]]:
+    """An instrument without its faults, and these."""
+    faulty: object = instrument
+    if isinstance(faulty, FaultyInstrument):
+        return faulty.instrument, faulty.faults
+    return instrument, ()
+
+
 class FaultyInstrument:
-    """An instrument with a fault, in front of the instrument itself.
+    """An instrument with faults, in front of the instrument itself.
 
     Parameters
     ----------
     instrument
-        What it would be without.
+        What it would be without; one that is faulty already keeps its faults.
     fault
         What goes wrong.
     when
@@ -122,12 +140,14 @@ class FaultyInstrument:
     """
 
     def __init__(self, instrument: Instrument, fault: InstrumentFault, when: When) -> None:
-        self.instrument, self.fault, self.when = instrument, fault, when
-        fault.attach(instrument, when)
+        self.instrument, before = bare(instrument)
+        self.faults = (*before, (fault, when))
+        self.when = when
+        fault.attach(self.instrument, when)
 
     def __getattr__(self, name: str) -> Any:
         return getattr(self.instrument, name)
 
     def line(self, sink: Callable[[bytes], None] | None = None) -> Line:
         """A line for one client."""
-        return FaultyLine(self.instrument, sink, self.fault, self.when)
+        return FaultyLine(self.instrument, sink, self.faults)
