@@ -94,8 +94,25 @@ def _mask(limit: MaskLimit, mask: Mask, grid: FloatArray | None) -> Iterator[tup
             "over",
             "Lengthen the mask or shorten the band.",
         )
+    counted = any(line.relative_to == "figure" for line in mask.lines)
+    if counted and limit.reference is None:
+        yield (
+            f"mask {limit.mask} counts from a figure, but the limit names none",
+            "mask",
+            "Add for example `reference: {figure: insertion loss, at: 169.4 MHz}`.",
+        )
+    if limit.reference and not counted:
+        yield f"mask {limit.mask} counts from no figure", "reference", "Take `reference` out."
     if grid is None:
         return
+    counts_at = limit.reference.at if limit.reference else None
+    if counts_at is not None and outside(counts_at, counts_at, grid):
+        yield (
+            f"the reference of the mask lies at {span(counts_at, counts_at)}, but the sweep covers "
+            f"{span(grid[0], grid[-1])}",
+            "reference",
+            "Widen the sweep or take another frequency.",
+        )
     low, high = mask.band
     if outside(low, high, grid):
         yield (

@@ -253,3 +253,45 @@ def test_a_slice_of_the_band_gives_what_the_whole_trace_gives(filter_variations,
 
 def test_decibels_of_nothing_are_a_number():
     assert decibels(np.array([0j]))[0] == -400.0
+
+
+@pytest.mark.parametrize(
+    ("relative", "reference", "limit_db", "expected"),
+    [
+        # The trace falls straight from -10 dB to -30 dB; at 150 MHz it is -20 dB.
+        ("peak", None, -15.0, -20.0),
+        ("figure", {"figure": "insertion loss", "at": "150 MHz"}, -5.0, -10.0),
+    ],
+)
+def test_a_relative_line_counts_from_what_was_measured(relative, reference, limit_db, expected):
+    line_ = MaskLine("at least", np.array([100e6, 200e6]), np.full(2, limit_db), relative_to=relative)
+    more = {"reference": reference} if reference else {}
+    falls = network(np.linspace(-10.0, -30.0, 11))
+    (found,) = judge(falls, {"m": Mask("m", (line_,))}, mask="m", trace="S21", **more)
+    assert found.value == pytest.approx(expected, abs=0.2)
+    assert found.margin == pytest.approx(found.value - limit_db)
+    assert found.conclusion == "fail"
+    assert f"relative to {'the peak' if relative == 'peak' else 'insertion loss, at 150 MHz'}" in found.name
+
+
+def test_what_trace_and_reference_have_in_common_drops_out_of_the_uncertainty():
+    terms = ResidualTerms.from_mapping({"transmission tracking": "0.5 dB"})
+    near = MaskLine("at most", np.array([100e6, 101e6]), np.full(2, 3.0), relative_to="figure")
+    absolute = MaskLine("at most", np.array([100e6, 101e6]), np.full(2, 3.0))
+    from_here = {"reference": {"figure": "insertion loss", "at": "100 MHz"}}
+    masks = {"m": Mask("m", (near,)), "a": Mask("a", (absolute,))}
+    (one,) = judge(network(-30.0, terms), masks, mask="m", trace="S21", **from_here)
+    (two,) = judge(network(-30.0, terms), masks, mask="a", trace="S21")
+    assert two.uncertainty > 0.5
+    assert one.uncertainty < 0.01 * two.uncertainty
+
+
+def test_an_impedance_figure_is_told_in_the_impedance_of_its_result():
+    same = network(-30.0)
+    other = Network(same.f_hz, same.nominal, z0_ohm=75.0)
+    limit = {"figure": "resistance", "port": 1, "at": "150 MHz", "at least": "1 ohm"}
+    (in_50,), (in_75,), (given,) = (
+        judge(same, **limit), judge(other, **limit), judge(other, **limit, reference="50 ohm")
+    )  # fmt: skip
+    assert in_75.value == pytest.approx(1.5 * in_50.value)
+    assert given.value == in_50.value

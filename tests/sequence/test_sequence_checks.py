@@ -173,7 +173,7 @@ def test_a_mask_that_covers_its_band(good, load_text):
     ("old", "new", "expected"),
     [
         ("[20 MHz, -1 dB], [150", "[20 MHz, -1 dB], [400", "f.yaml:5:3: lines cross near"),
-        ("[1 GHz, -50 dB]", "[200 MHz, -50 dB]", "goes backwards from 3e+08 Hz to 2e+08 Hz"),
+        ("[1 GHz, -50 dB]", "[200 MHz, -50 dB]", "goes backwards from 300 MHz to 200 MHz"),
         ("[1 GHz, -50 dB]", "[1 GHz, -50]", "-50 has no unit"),
         ("side: at most", "side: upper", "side: 'upper' is not allowed here"),
     ],

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
+from typing import Any
 
 import numpy as np
 
@@ -19,7 +20,7 @@ from benchrun.rf.masks import MaskLine
 from benchrun.rf.tone import Tone
 from benchrun.rf.twoport import FloatArray, TwoPort
 from benchrun.sequence.steps import Judge
-from benchrun.sequence.steps.judge import FigureLimit, MaskLimit
+from benchrun.sequence.steps.judge import FigureLimit, FigureText, MaskLimit
 from benchrun.uncertainty.decision import COVERAGE_FACTOR, Rule
 
 __all__ = ["JudgeArithmetic"]
@@ -41,7 +42,7 @@ class JudgeArithmetic:
                 lines = state.procedure.masks[limit.mask].lines
                 for number, line in enumerate(lines, 1):
                     name = f"{limit.text}, line {number}" if len(lines) > 1 else limit.text
-                    judged.append(_judge_line(name, line, network, limit.trace, rule))
+                    judged.append(_judge_line(name, line, network, limit, rule))
             else:
                 judged.extend(_judge_figure(limit, network, rule))
         state.judged[step.name] = tuple(judged)
@@ -49,10 +50,11 @@ class JudgeArithmetic:
 
 def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[JudgedFigure]:
     kind, unit = limit.kind, limit.kind.dimension.unit or "1"
+    parameters = _in_impedance(limit, network)
     for side, bound in limit.bounds.items():
         name = limit.text if len(limit.bounds) == 1 else f"{limit.text}, {side}"
         try:
-            found = kind.measure(network.f_hz, network.nominal, side, **limit.parameters)
+            found = kind.measure(network.f_hz, network.nominal, side, **parameters)
         except InvalidMeasurement as error:
             # Limits on both sides that the sweep covers, and no such frequency in it: outside for certain.
             yield not_told(name, unit, bound, side, rule, error.reason, failed=len(limit.bounds) == 2)
@@ -62,7 +64,7 @@ def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[
         if network.varied is not None:
             near = _near(network.f_hz, limit)
             varied = _sliced(network.varied, near)
-            moved = kind.measure(network.f_hz[near], varied, side, **limit.parameters).value
+            moved = kind.measure(network.f_hz[near], varied, side, **parameters).value
             if kind.sense:
                 up, down = _decibel_bounds(
                     10.0 ** (kind.sense * (moved - value) / 20.0) - 1.0, network.systematic
@@ -71,6 +73,13 @@ def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[
             else:
                 up = down = COVERAGE_FACTOR * float(combine(moved - value, network.systematic))
         yield told(name, value, unit, bound, side, float(found.at_hz), rule, up, down)
+
+
+def _in_impedance(limit: FigureText, network: Network) -> dict[str, Any]:
+    """A figure's parameters; the reference impedance is the result's own, unless the limit names another."""
+    if "reference" in limit.kind.parameters and limit.reference is None:
+        return {**limit.parameters, "reference": network.z0_ohm}
+    return limit.parameters
 
 
 def _near(f_hz: FloatArray, limit: FigureLimit) -> slice:
@@ -100,24 +109,48 @@ def _decibel_bounds(relative: FloatArray, systematic: int) -> tuple[float, float
     return 20.0 * math.log10(1.0 + expanded), lower
 
 
-def _judge_line(name: str, line: MaskLine, network: Network, trace: str, rule: Rule) -> JudgedFigure:
+def _judge_line(name: str, line: MaskLine, network: Network, limit: MaskLimit, rule: Rule) -> JudgedFigure:
     """One line of a mask: the point with the least margin after its guard band decides."""
-    nominal, varied = network.plane(trace)
-    # A corner of the line between two samples may be the tightest place, so corners count as samples.
-    f_hz = np.unique(np.concatenate([network.f_hz[line.inside(network.f_hz)], line.f_hz]))
-    level, limit = at(network.f_hz, decibels(nominal), f_hz), line.limit_at(f_hz)
+    nominal, varied = network.plane(limit.trace)
+    size, sizes = np.abs(nominal), None if varied is None else np.abs(varied)
+    if line.relative_to:
+        # Each variation counts from its own reference: what both have in common drops out.
+        base, bases = _counted_from(line, network, limit, size, sizes)
+        size, sizes = size / base, None if sizes is None else sizes / bases
+        name = f"{name}, relative to {'the peak' if line.relative_to == 'peak' else limit.reference_text}"
+    f_hz = line.samples(network.f_hz)
+    level, bound = at(network.f_hz, decibels(size), f_hz), line.limit_at(f_hz)
     up = down = None
-    if varied is not None:
-        magnitude = np.maximum(np.abs(nominal), 1e-20)
-        relative = COVERAGE_FACTOR * combine(np.abs(varied) / magnitude - 1.0, network.systematic)
+    if sizes is not None:
+        relative = COVERAGE_FACTOR * combine(sizes / np.maximum(size, 1e-20) - 1.0, network.systematic)
         relative = at(network.f_hz, relative, f_hz)
         up = 20.0 * np.log10(1.0 + relative)
         down = np.where(relative < 1.0, -20.0 * np.log10(np.maximum(1.0 - relative, 1e-20)), np.inf)
-    margin = limit - level if line.side == "at most" else level - limit
+    margin = bound - level if line.side == "at most" else level - bound
     towards = up if line.side == "at most" else down
     guard = np.zeros_like(margin) if towards is None or rule.factor == 0 else rule.factor * towards
     worst = int(np.argmin(margin - guard))
     return told(
-        name, float(level[worst]), "dB", float(limit[worst]), line.side, float(f_hz[worst]), rule,
+        name, float(level[worst]), "dB", float(bound[worst]), line.side, float(f_hz[worst]), rule,
         None if up is None else float(up[worst]), None if down is None else float(down[worst]),
     )  # fmt: skip
+
+
+def _counted_from(
+    line: MaskLine, network: Network, limit: MaskLimit, size: FloatArray, sizes: FloatArray | None
+) -> tuple[float, FloatArray]:
+    """Magnitude that a relative line counts from: nominal, and under each variation ``(v, 1)``."""
+    if line.relative_to == "peak":
+        bases = np.zeros((0, 1)) if sizes is None else np.max(sizes, -1, keepdims=True)
+        return float(np.max(size)), bases
+    figure = limit.reference
+    if figure is None:
+        raise RuntimeError("a mask that counts from a figure was never checked")
+
+    def magnitude(data: Data) -> FloatArray:
+        parameters = _in_impedance(figure, network)
+        found = figure.kind.measure(network.f_hz, data, "at most", **parameters).value
+        return np.asarray(10.0 ** (figure.kind.sense * found / 20.0))
+
+    bases = np.zeros(0) if network.varied is None else magnitude(network.varied)
+    return float(magnitude(network.nominal)), bases[..., np.newaxis]

@@ -24,7 +24,7 @@ from benchrun.sequence.fields import (
 from benchrun.sequence.steps.base import StepModel
 from benchrun.uncertainty.decision import Rule
 
-__all__ = ["FigureLimit", "Judge", "Limit", "MaskLimit"]
+__all__ = ["FigureLimit", "FigureText", "Judge", "Limit", "MaskLimit"]
 
 
 def _rule(value: object) -> Rule:
@@ -103,11 +103,10 @@ LengthRange = Annotated[
 ]
 
 
-class FigureLimit(FileModel):
-    """A limit on one figure."""
+class FigureText(FileModel):
+    """A figure with what it takes."""
 
     figure: Annotated[str, BeforeValidator(_figure), _FIGURE_NAMES]
-    name: str | None = Field(default=None, description="how people call this limit", max_length=60)
     over: FrequencyRange | None = Field(default=None, description="the band")
     at: Frequency | None = Field(default=None, description="one frequency instead of a band")
     against: FrequencyRange | None = Field(
@@ -125,9 +124,6 @@ class FigureLimit(FileModel):
     )
     distance: Length | None = Field(default=None, description="along the line, from the reference plane")
     within: LengthRange | None = Field(default=None, description="the stretch of line to look at")
-    at_most: Bound | None = Field(default=None, alias="at most", description="greatest value, with unit")
-    at_least: Bound | None = Field(default=None, alias="at least", description="least value, with unit")
-    rule: RuleText | None = None
 
     @property
     def kind(self) -> FigureKind:
@@ -135,7 +131,7 @@ class FigureLimit(FileModel):
         return FIGURES[self.figure]
 
     @model_validator(mode="after")
-    def _fits(self) -> FigureLimit:
+    def _fits(self) -> FigureText:
         kind, given = self.kind, self._given()
         for key in given:
             if key not in kind.parameters:
@@ -146,6 +142,44 @@ class FigureLimit(FileModel):
                 raise trouble(f"{self.figure} needs `{key}`: {kind.meaning}")
         if "over" in kind.parameters and "at" in kind.parameters and (self.over is None) == (self.at is None):
             raise trouble(f"{self.figure} needs `over` (a band) or `at` (a frequency), one of them")
+        return self
+
+    def _given(self) -> dict[str, Any]:
+        return {key: value for key in _KEYS if (value := getattr(self, key)) is not None}
+
+    @property
+    def parameters(self) -> dict[str, Any]:
+        """Complete parameters of the figure, in SI."""
+        defaults = {k: p.default for k, p in self.kind.parameters.items() if p.default is not None}
+        return {**defaults, **self._given()}
+
+    @property
+    def text(self) -> str:
+        """The figure in words."""
+        words = [self.figure]
+        for key, value in self._given().items():
+            parameter = self.kind.parameters[key]
+            if parameter.form == "range":
+                band = " to ".join(render(x, parameter.dimension) for x in value)
+                words.append(band if key == "over" else f"{key} {band}")
+            elif parameter.form == "value":
+                words.append(f"{key} {render(value, parameter.dimension)}")
+            else:
+                words.append(f"{key} {value}" if key == "port" else str(value))
+        return ", ".join(words)
+
+
+class FigureLimit(FigureText):
+    """A limit on one figure."""
+
+    name: str | None = Field(default=None, description="how people call this limit", max_length=60)
+    at_most: Bound | None = Field(default=None, alias="at most", description="greatest value, with unit")
+    at_least: Bound | None = Field(default=None, alias="at least", description="least value, with unit")
+    rule: RuleText | None = None
+
+    @model_validator(mode="after")
+    def _bounded(self) -> FigureLimit:
+        kind = self.kind
         for side in ("at most", "at least"):
             if getattr(self, side.replace(" ", "_")) is not None and side not in kind.sides:
                 raise trouble(f"`{side}` makes no sense for {self.figure}: {kind.meaning}", side)
@@ -156,9 +190,6 @@ class FigureLimit(FileModel):
         if low is not None and high is not None and low >= high:
             raise trouble(f"`at least` {self.at_least} is not below `at most` {self.at_most}", "at least")
         return self
-
-    def _given(self) -> dict[str, Any]:
-        return {key: value for key in _KEYS if (value := getattr(self, key)) is not None}
 
     def _bound(self, side: str) -> float | None:
         text = self.at_most if side == "at most" else self.at_least
@@ -176,27 +207,9 @@ class FigureLimit(FileModel):
         return {side: value for side, value in found.items() if value is not None}
 
     @property
-    def parameters(self) -> dict[str, Any]:
-        """Complete parameters of the figure, in SI."""
-        defaults = {k: p.default for k, p in self.kind.parameters.items() if p.default is not None}
-        return {**defaults, **self._given()}
-
-    @property
     def text(self) -> str:
         """The figure in words."""
-        if self.name:
-            return self.name
-        words = [self.figure]
-        for key, value in self._given().items():
-            parameter = self.kind.parameters[key]
-            if parameter.form == "range":
-                band = " to ".join(render(x, parameter.dimension) for x in value)
-                words.append(band if key == "over" else f"{key} {band}")
-            elif parameter.form == "value":
-                words.append(f"{key} {render(value, parameter.dimension)}")
-            else:
-                words.append(f"{key} {value}" if key == "port" else str(value))
-        return ", ".join(words)
+        return self.name or super().text
 
 
 class MaskLimit(FileModel):
@@ -205,13 +218,30 @@ class MaskLimit(FileModel):
     mask: str = Field(min_length=1, description="name or file of the mask")
     trace: Literal["S11", "S12", "S21", "S22"]
     over: FrequencyRange | None = Field(default=None, description="a band that the mask must cover whole")
+    reference: FigureText | None = Field(
+        default=None, description="figure that lines `relative to: figure` count from, at one frequency"
+    )
     name: str | None = Field(default=None, max_length=60)
     rule: RuleText | None = None
+
+    @model_validator(mode="after")
+    def _a_level(self) -> MaskLimit:
+        if self.reference is not None and (not self.reference.kind.sense or self.reference.at is None):
+            levels = ", ".join(
+                sorted(name for name, kind in FIGURES.items() if kind.sense and "at" in kind.parameters)
+            )
+            raise trouble(f"`reference` needs a level at one frequency (`at`): one of {levels}", "reference")
+        return self
 
     @property
     def text(self) -> str:
         """The mask in words."""
         return self.name or f"mask {self.mask} on {self.trace}"
+
+    @property
+    def reference_text(self) -> str:
+        """What relative lines count from, in words."""
+        return self.reference.text if self.reference else "the peak"
 
 
 def _which(value: Any) -> str:
