@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from typing import TextIO
 
 from sim_instruments.bench import SimulatedBench
 from sim_instruments.look import draw
-from sim_instruments.world import NoSuchItem
+from sim_instruments.world import NoSuchItem, in_words
 
 __all__ = ["HELP", "Console", "NotUnderstood", "read_links"]
 
@@ -30,8 +30,15 @@ class NotUnderstood(ValueError):
     """The words make no sense; the message says what would."""
 
 
-def read_links(words: str) -> list[tuple[list[str], list[int]]]:
+def read_links(words: str, known: Sequence[int] = (1, 2)) -> list[tuple[list[str], list[int]]]:
     """Connections in words, as :meth:`sim_instruments.world.World.connect` takes them.
+
+    Parameters
+    ----------
+    words
+        What goes where.
+    known
+        Ports of the bench.
 
     Raises
     ------
@@ -59,8 +66,8 @@ def read_links(words: str) -> list[tuple[list[str], list[int]]]:
         links.append((items, ports))
     used = [port for _, ports in links for port in ports]
     for port in used:
-        if port not in (1, 2):
-            raise NotUnderstood(f"there is no port {port}; the analyzers have ports 1 and 2")
+        if port not in known:
+            raise NotUnderstood(f"there is no port {port}; the bench has ports {in_words(known)}")
         if used.count(port) > 1:
             raise NotUnderstood(f"port {port} is named twice; a port takes one connection")
     return links
@@ -118,16 +125,21 @@ class Console:
         return True
 
     def _connect(self, words: str) -> str:
-        new, world = read_links(words), self.bench.world
+        world = self.bench.world
+        new = read_links(words, world.ports)
         taken = {port for _, ports in new for port in ports}
         world.connect([*self._others(taken), *new])
         return self._connected()
 
     def _disconnect(self, words: str) -> str:
-        match = re.fullmatch(r"(?:port )?([12])", words)
-        if words and match is None:
-            raise NotUnderstood(f'{words!r} is no port; write "disconnect", or "disconnect port 1"')
-        self.bench.world.connect(self._others({int(match[1])} if match else {1, 2}))
+        known = self.bench.world.ports
+        match = re.fullmatch(r"(?:port )?(\d{1,4})", words, re.ASCII)
+        if words and (match is None or int(match[1]) not in known):
+            raise NotUnderstood(
+                f'{words!r} is no port of this bench; write "disconnect", or "disconnect port N" '
+                f"with N one of {in_words(known)}"
+            )
+        self.bench.world.connect(self._others({int(match[1])} if match else set(known)))
         return self._connected()
 
     def _others(self, taken: set[int]) -> list[tuple[list[str], list[int]]]:

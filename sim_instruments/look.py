@@ -13,45 +13,54 @@ from rich.text import Text
 from sim_instruments.bench import SimulatedBench
 from sim_instruments.world import Link
 
-__all__ = ["draw", "drawing"]
-
-_PORTS = (1, 2)
+__all__ = ["draw", "drawing", "owners"]
 
 
 def drawing(bench: SimulatedBench) -> RenderableType:
     """The bench for a rich console: instruments, a row for each connection, what lies about."""
     world = bench.world
     with world.lock:
-        links, minutes = world.links, world.time_s / 60.0
+        standing, minutes = world.standing(), world.time_s / 60.0
         heading = f"{minutes:.1f} min, {world.temperature():.1f} °C"
         serial = world.serial
     rows: list[RenderableType] = []
-    for link in sorted(links, key=lambda link: link.ports):
-        rows.append(_row(link, serial))
-    busy = {port for link in links for port in link.ports}
-    rows += [Text(f"port {port}  ──  nothing", style="dim") for port in _PORTS if port not in busy]
-    used = {item for link in links for item in link.items}
+    for link, switched in sorted(standing, key=lambda entry: entry[0].ports):
+        rows.append(_row(link, serial, switched))
+    busy = {port for link, _ in standing for port in link.ports}
+    rows += [Text(f"port {port}  ──  nothing", style="dim") for port in world.ports if port not in busy]
+    used = {item for link, _ in standing for item in link.items}
     lying = [name for name in world.items if name not in used]
     if serial and "unit" not in used:
         lying.append(f"unit {serial}")
     about = Table.grid(padding=(0, 2))
     for resource, instrument in bench.instruments.items():
         about.add_row("instrument", escape(f"{resource}  {' '.join(instrument.identity[:3])}"))
+    for port, whose in owners(bench).items():
+        about.add_row(f"port {port}", escape(whose))
     about.add_row("on the table", escape(", ".join(lying) or "nothing"))
     for known, says in bench.serials.items():
         about.add_row("in the drawer", escape(f"{known}: {says}"))
     return Group(Panel(Group(*rows), title=heading, title_align="right", expand=False, padding=(1, 2)), about)
 
 
-def _row(link: Link, serial: str) -> RenderableType:
-    """One connection from left to right; a double line is a joint."""
-    row = Table.grid()
+def owners(bench: SimulatedBench) -> dict[int, str]:
+    """Whose each port is, in words."""
+    outlets = getattr(bench.world, "outlets", {})
+    return {
+        port: " and ".join(outlets[port].owners if port in outlets else []) or "network analyzer"
+        for port in bench.world.ports
+    }
+
+
+def _row(link: Link, serial: str, switched: bool) -> RenderableType:
+    """One connection from left to right; a double line is a joint, a broken one a switch's cable."""
+    row, joint = Table.grid(), "╌╌╌" if switched else "═══"
     cells: list[RenderableType] = [_middle(f"port {link.ports[0]} ")]
     for item in link.items:
         name = f"unit {serial}" if item == "unit" and serial else item
-        cells += [_middle("═══"), Panel(escape(name), expand=False, style="bold" if item == "unit" else "")]
+        cells += [_middle(joint), Panel(escape(name), expand=False, style="bold" if item == "unit" else "")]
     if len(link.ports) == 2:
-        cells += [_middle("═══"), _middle(f" port {link.ports[1]}")]
+        cells += [_middle(joint), _middle(f" port {link.ports[1]}")]
     row.add_row(*cells)
     return row
 

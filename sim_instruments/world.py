@@ -19,7 +19,7 @@ from sim_instruments.hands import TURNED, Hands, Joint, Link
 from sim_instruments.parts import Part, Surroundings
 from sim_instruments.waves import Matrix, Real, flip
 
-__all__ = ["Link", "NoSuchItem", "World"]
+__all__ = ["Link", "NoSuchItem", "World", "in_words"]
 
 _CONNECT_S = 25.0
 """Seconds that a practised hand needs to clean, align and tighten one connection."""
@@ -165,8 +165,10 @@ class World:
         taken: set[int] = set()
         for link in asked:
             for port in link.ports:
-                if port not in (1, 2):
-                    raise NoSuchItem(f"nothing can be connected to port {port}; there are ports 1 and 2")
+                if port not in self.ports:
+                    raise NoSuchItem(
+                        f"nothing can be connected to port {port}; there are ports {in_words(self.ports)}"
+                    )
                 if port in taken:
                     raise NoSuchItem(f"port {port} cannot take two connections at once")
                 taken.add(port)
@@ -174,6 +176,17 @@ class World:
             for item in link.items:
                 if self.part(item).ports == 1 and item in between_two:
                     raise NoSuchItem(f"{item!r} has one port and cannot stand between two others")
+
+    @property
+    def ports(self) -> tuple[int, ...]:
+        """Where something can be connected."""
+        return 1, 2
+
+    def standing(self) -> list[tuple[Link, bool]]:
+        """What is connected now, and whether a switch has done it."""
+        with self.lock:
+            self._settle()
+            return [(link, False) for link in self.links]
 
     def _settle(self) -> None:
         """Let a connection that was promised come about when its time has come."""
@@ -273,6 +286,18 @@ class World:
     def truth(self, f_hz: Real) -> Matrix:
         """True S-parameters of the unit itself, ``(f, n, n)``: for tests and studies, not for a sequence."""
         return self.part("unit").matrix(f_hz, self.surroundings())
+
+
+def in_words(ports: Sequence[int]) -> str:
+    """Numbers of ports in a sentence.
+
+    Examples
+    --------
+    >>> in_words((1, 2, 3))
+    '1, 2 and 3'
+    """
+    *some, last = map(str, ports)
+    return f"{', '.join(some)} and {last}" if some else last
 
 
 def _holds_unit(link: Link) -> bool:

@@ -99,7 +99,12 @@ class Generator(Instrument):
         )  # fmt: skip
         optional = chosen("manners", manners, "source node", "optional", "required") == "optional"
         self._add_commands(settings, "[SOURce]" if optional else "SOURce")
-        world.own(int(spec["ports"][0]), match_of(draws, number(spec.get("match", 18.0))), self)
+        world.own(
+            int(spec["ports"][0]),
+            match_of(draws, number(spec.get("match", 18.0))),
+            self,
+            owner=f"generator {identity[2]}",
+        )
 
     def _add_commands(self, settings: Settings, source: str) -> None:
         frequency = settings.number("frequency", self._ends_hz, FREQUENCY, self._set_frequency)

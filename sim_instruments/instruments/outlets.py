@@ -43,10 +43,13 @@ class Outlet:
         Its reflection; matched if not given.
     sources
         What feeds it; more than one: through a combiner inside.
+    owners
+        The instruments that it belongs to, in words; none: the network analyzers.
     """
 
     gamma: Gamma = _matched
     sources: list[Source] = field(default_factory=list)
+    owners: list[str] = field(default_factory=list)
 
     def signal(self) -> Signal:
         """What comes out of it into a matched load; tones of one frequency stay apart."""

@@ -85,7 +85,9 @@ class PowerMeter(Sweeping):
             scientific=chosen("manners", manners, "numbers", "plain", "scientific") == "scientific",
         )  # fmt: skip
         self._add_commands()
-        world.own(self.port, match_of(draws, number(spec.get("match", 26.0))))
+        world.own(
+            self.port, match_of(draws, number(spec.get("match", 26.0))), owner=f"power meter {identity[2]}"
+        )
 
     def _add_commands(self) -> None:
         settings, add = self._settings, self.tree.add

@@ -19,7 +19,7 @@ from sim_instruments.instruments.outlets import Outlet, Source, together
 from sim_instruments.instruments.signals import KT0_MW_HZ, Gamma, Row, Signal, through
 from sim_instruments.parts import Part, Surroundings
 from sim_instruments.waves import Matrix, Real, flip, thru
-from sim_instruments.world import NoSuchItem, World
+from sim_instruments.world import World
 
 __all__ = ["Routes", "WiredWorld"]
 
@@ -54,8 +54,19 @@ class WiredWorld(World):
         self.supply: Callable[[], float] | None = None
         """Volts that the active parts are fed with now; None: their rated voltage."""
 
-    def own(self, port: int, gamma: Gamma, source: Source | None = None) -> None:
+    def own(self, port: int, gamma: Gamma, source: Source | None = None, owner: str = "") -> None:
         """Give an instrument an outlet; further sources on the same one go through a combiner.
+
+        Parameters
+        ----------
+        port
+            Its number.
+        gamma
+            What it reflects.
+        source
+            What sends out of it.
+        owner
+            The instrument, in words.
 
         Raises
         ------
@@ -64,9 +75,10 @@ class WiredWorld(World):
         """
         outlet = self.outlets.get(port)
         if outlet is None:
-            self.outlets[port] = Outlet(gamma, [source] if source else [])
+            self.outlets[port] = Outlet(gamma, [source] if source else [], [owner])
         elif source is not None and outlet.sources:
             outlet.sources.append(source)
+            outlet.owners.append(owner)
         else:
             raise ValueError(f"port {port} belongs to another instrument already")
 
@@ -78,25 +90,15 @@ class WiredWorld(World):
 
     # -- what is connected -------------------------------------------------------------------------------
 
-    def _check(self, asked: tuple[Link, ...]) -> None:
-        taken: set[int] = set()
-        for link in asked:
-            super()._check((Link(link.items, self._as_first_two(link.ports)),))
-            for port in link.ports:
-                if port in taken:
-                    raise NoSuchItem(f"port {port} cannot take two connections at once")
-                taken.add(port)
+    @property
+    def ports(self) -> tuple[int, ...]:
+        """Where something can be connected."""
+        return tuple(sorted(self.outlets))
 
-    def _as_first_two(self, ports: tuple[int, ...]) -> tuple[int, ...]:
-        """Ports as the smaller world knows them, whose checks of the items hold here too."""
-        for port in ports:
-            if port not in self.outlets:
-                *some, last = sorted(self.outlets)
-                known = f"{', '.join(map(str, some))} and {last}"
-                raise NoSuchItem(f"nothing can be connected to port {port}; there are ports {known}")
-        if len(ports) == 2 and ports[0] == ports[1]:
-            raise NoSuchItem(f"port {ports[0]} cannot take two connections at once")
-        return tuple(range(1, len(ports) + 1))
+    def standing(self) -> list[tuple[Link, bool]]:
+        """What is connected now, and whether a switch has done it."""
+        with self.lock:
+            return [(link, link not in self.links) for link, _, _ in self._rows()]
 
     @property
     def connection(self) -> str:

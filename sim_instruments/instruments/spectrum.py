@@ -164,7 +164,11 @@ class SpectrumAnalyzer(Sweeping):
         self.trace: Real | None = None
         self.reset()
         add_commands(self, manners)
-        world.own(self.port, match_of(draws, number(spec.get("match", 16.0))))
+        world.own(
+            self.port,
+            match_of(draws, number(spec.get("match", 16.0))),
+            owner=f"spectrum analyzer {identity[2]}",
+        )
 
     def reset(self) -> None:
         """Everything coupled, full span, single sweeps."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import re
 from collections.abc import Callable
 from dataclasses import dataclass, field
@@ -17,6 +18,14 @@ Getter: TypeAlias = Callable[[tuple[str, ...]], "str | bytes"]
 
 _WRITTEN = re.compile(r"([A-Za-z_]+?)(\d*)", re.ASCII)
 _DECLARED = re.compile(r"(\[?):?([A-Za-z_]+)(?:<(\d+)>)?\]?")
+
+
+@functools.cache
+def _declared(header: str) -> tuple[tuple[str, int, bool], ...]:
+    """Words of a header with their greatest suffix, and whether they may be left out."""
+    return tuple(
+        (word, int(suffix or 1), bool(bracket)) for bracket, word, suffix in _DECLARED.findall(header)
+    )
 
 
 @dataclass(frozen=True)
@@ -84,20 +93,21 @@ class Tree:
     def __init__(self) -> None:
         self._root = _Node()
         self._known: dict[tuple[str, ...], Command] = {}
-        self.headers: list[str] = []
+        self.headers: dict[str, None] = {}
 
     def add(self, header: str, command: Command) -> None:
         """Add one command, or put another in its place."""
         node = self._root
-        for bracket, word, suffix in _DECLARED.findall(header):
-            found = next((c for c in node.children if c.long == word), None)
-            if found is None:
-                found = _Node(word, int(suffix or 1), bool(bracket))
+        for word, suffixes, optional in _declared(header):
+            for found in node.children:
+                if found.long == word:
+                    break
+            else:
+                found = _Node(word, suffixes, optional)
                 node.children.append(found)
             node = found
         node.command = command
-        if header not in self.headers:
-            self.headers.append(header)
+        self.headers[header] = None
         self._known.clear()
 
     def find(self, header: tuple[str, ...], path: tuple[str, ...]) -> Command:
