@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import re
-from collections.abc import Iterator, Mapping
-from contextlib import contextmanager
+from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Protocol
@@ -19,18 +17,16 @@ from sim_instruments.instruments.recorded import Recorded
 from sim_instruments.instruments.routing import WiredWorld
 from sim_instruments.parts import Part, build
 from sim_instruments.scpi.instrument import Instrument
+from sim_instruments.trouble import BadBench, at, table
+from sim_instruments.units import Family, Units, placed
 from sim_instruments.values import number
-from sim_instruments.world import NoSuchItem, World
+from sim_instruments.world import World
 
 __all__ = ["BadBench", "Happening", "SimulatedBench", "load_bench"]
 
 _FOLDER = Path(__file__).parent / "benches"
 _LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
 """The same loader in C where the library has it: ten times as fast."""
-
-
-class BadBench(ValueError):
-    """A simulated bench's file makes no sense."""
 
 
 class Happening(Protocol):
@@ -99,95 +95,34 @@ def load_bench(name: str, seed: int, folder: Path = _FOLDER) -> SimulatedBench:
         raise BadBench(f"simulated bench {path}: {error}") from (error.__cause__ or error)
 
 
-@contextmanager
-def _at(where: str) -> Iterator[None]:
-    """Say where a mistake is."""
-    try:
-        yield
-    except KeyError as error:
-        raise BadBench(f"{where}: {error} is missing") from error
-    except BadBench:
-        raise
-    except OSError as error:
-        raise BadBench(f"{where}: {error.filename}: {error.strerror}") from error
-    except (TypeError, ValueError, AttributeError) as error:
-        raise BadBench(f"{where}: {error}") from error
-
-
-def _table(value: Any, where: str) -> Mapping[str, Any]:
-    if not isinstance(value, Mapping):
-        raise BadBench(f"{where} is no list of names with values")
-    return value
-
-
 def _build(spec: Any, seed: int, folder: Path) -> SimulatedBench:
-    spec = _table(spec, "the file")
+    spec = table(spec, "the file")
     if "instruments" not in spec:
         raise BadBench("'instruments' is missing")
     draws = Draws(seed)
     items: dict[str, Part] = {}
     fixtures: dict[str, Part] = {}
-    for name, s in _table(spec.get("items") or {}, "items").items():
-        with _at(f"item {name!r}"):
-            items[name] = build(_placed(s, folder), draws / "item" / name)
+    for name, s in table(spec.get("items") or {}, "items").items():
+        with at(f"item {name!r}"):
+            items[name] = build(placed(s, folder), draws / "item" / name)
             if items[name].kind == "fixture":
                 fixtures[name] = build({**s, "spread": {}}, draws)
     families = [
-        Family(str(name), _table(family, f"unit family {name!r}"), folder, draws / "unit")
-        for name, family in _table(spec.get("units") or {}, "units").items()
+        Family(str(name), table(family, f"unit family {name!r}"), folder, draws / "unit")
+        for name, family in table(spec.get("units") or {}, "units").items()
     ]
-    known = {serial: says for family in families for serial, says in family.known.items()}
-
-    def unit(serial: str) -> Part:
-        for family in families:
-            if family.pattern.fullmatch(serial):
-                return family.unit(serial)
-        raise NoSuchItem(f"the simulated bench has no unit {serial!r}; it has {', '.join(known) or 'none'}")
-
-    with _at("room"):
+    units = Units(families)
+    with at("room"):
         world = WiredWorld(
-            seed, items, unit, number(spec.get("temperature", 23.0)),
+            seed, items, units, number(spec.get("temperature", 23.0)),
             drift_k_h=number(spec.get("drift", 0.0)), torque_wrench=bool(spec.get("torque wrench", True)),
             humidity=number(spec.get("humidity", 0.45)),
         )  # fmt: skip
     instruments: dict[str, Instrument] = {}
-    for resource, s in _table(spec["instruments"], "instruments").items():
-        with _at(f"instrument {resource!r}"):
+    for resource, s in table(spec["instruments"], "instruments").items():
+        with at(f"instrument {resource!r}"):
             instruments[resource] = _instrument(world, resource, s, draws, folder)
-    return SimulatedBench(world, instruments, known, fixtures)
-
-
-class Family:
-    """Units of one design: their serial numbers, and what is known of some."""
-
-    def __init__(self, name: str, spec: Mapping[str, Any], folder: Path, draws: Draws) -> None:
-        self.name, self._folder, self._draws = name, folder, draws
-        self.where = f"unit family {name!r}"
-        with _at(self.where):
-            self._design = dict(spec["design"])
-            self._changes = {str(k): dict(v or {}) for k, v in (spec.get("known") or {}).items()}
-            try:
-                self.pattern = re.compile(str(spec["serial"]))
-            except re.error as error:
-                raise BadBench(f"{self.where}: serial {spec['serial']!r} is no pattern: {error}") from error
-        self.known = {k: str(v.get("says", "good")) for k, v in self._changes.items()}
-
-    def unit(self, serial: str) -> Part:
-        """The unit of a serial number.
-
-        Raises
-        ------
-        BadBench
-            If its description makes no sense.
-        """
-        change = {k: v for k, v in self._changes.get(serial, {}).items() if k != "says"}
-        with _at(f"{self.where}, {serial}"):
-            return build(_placed({**self._design, **change}, self._folder), self._draws / serial)
-
-
-def _placed(spec: Mapping[str, Any], folder: Path) -> dict[str, Any]:
-    """File names in a description are looked up beside the bench file."""
-    return {**spec, "file": str(folder / spec["file"])} if "file" in spec else dict(spec)
+    return SimulatedBench(world, instruments, units.known, fixtures)
 
 
 def _instrument(

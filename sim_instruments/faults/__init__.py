@@ -1,6 +1,7 @@
 """Everything that can go wrong on a bench, by name; this table is the only place that knows it all.
 
-Faults of parts stand in words in bench files (``faults: ["L2 +15 %"]``), see :mod:`sim_instruments.parts`.
+Faults of parts stand in words in bench files (``faults: ["L2 +15 %"]``) and are put in by the same words
+after ``part:``; see :mod:`sim_instruments.faults.parts`.
 """
 
 from __future__ import annotations
@@ -13,12 +14,17 @@ from typing import cast
 from sim_instruments.bench import SimulatedBench
 from sim_instruments.faults import answers, conditions, slips, spoilt
 from sim_instruments.faults.line import FaultyInstrument, FaultyLine, InstrumentFault, bare
+from sim_instruments.faults.parts import PART, PART_FAULTS, PartFault, part_fault
 from sim_instruments.faults.when import When
 from sim_instruments.hands import Slip
 from sim_instruments.scpi.instrument import Instrument
+from sim_instruments.units import Units
 from sim_instruments.world import World
 
-__all__ = ["FAULTS", "Fault", "FaultyInstrument", "FaultyLine", "InstrumentFault", "When", "inject"]
+__all__ = [
+    "FAULTS", "PART", "PART_FAULTS", "Fault", "FaultyInstrument", "FaultyLine", "InstrumentFault",
+    "PartFault", "When", "inject", "is_fault", "part_fault",
+]  # fmt: skip
 
 
 @dataclass(frozen=True)
@@ -106,7 +112,8 @@ def inject(
         Its world is changed, so use what is returned from here on; several faults may be injected one after
         the other.
     name
-        One of :data:`FAULTS`.
+        One of :data:`FAULTS`, or ``"part: L2 +15 %"``, whose occasions are units laid on the bench from now
+        on.
     after
         Occasions that pass before it: answers or sweeps of an instrument, connections that it could spoil;
         drift begins at once.
@@ -130,8 +137,13 @@ def inject(
     >>> bench.world.connection
     'open on port 1'
     """
+    if name.startswith(PART):
+        return _into_units(bench, name, When(name, after, probability, seed))
     if name not in FAULTS:
-        raise ValueError(f"there is no fault {name!r}; known are {', '.join(FAULTS)}")
+        raise ValueError(
+            f"there is no fault {name!r}; known are {', '.join(FAULTS)}, and those of parts, as "
+            f"'{PART} {PART_FAULTS[0].words}'"
+        )
     fault = FAULTS[name]
     when = When(name, after, probability, seed, fault.once)
     if isinstance(fault.make, type):
@@ -141,6 +153,30 @@ def inject(
         bench.world.hands.slips.append((slip, when))
     else:
         when()  # it goes on from the first
+    return replace(bench, injected=(*bench.injected, when))
+
+
+def is_fault(name: str) -> bool:
+    """Whether :func:`inject` could know a fault of this name.
+
+    Examples
+    --------
+    >>> is_fault("unlock"), is_fault("part: L2 +15 %"), is_fault("part: sad"), is_fault("earthquake")
+    (True, True, False, False)
+    """
+    if name.startswith(PART):
+        return part_fault(name.removeprefix(PART)) is not None
+    return name in FAULTS
+
+
+def _into_units(bench: SimulatedBench, name: str, when: When) -> SimulatedBench:
+    words, units = name.removeprefix(PART).strip(), bench.world.units
+    if part_fault(words) is None:
+        known = ", ".join(repr(fault.words) for fault in PART_FAULTS)
+        raise ValueError(f"{words!r} is no fault of a part; write it as one of {known}")
+    if not isinstance(units, Units) or not units.families:
+        raise ValueError(f"this bench has no units that could have the fault {words!r}")
+    units.spoil(words, when)
     return replace(bench, injected=(*bench.injected, when))
 
 
