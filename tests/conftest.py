@@ -111,6 +111,11 @@ class Mishaps:
         """Answer that request with other bytes; with none, never."""
         self.at(words, number, lambda: setattr(self, "_canned", data))
 
+    def twice(self, words: str, number: int, data: bytes) -> None:
+        """Answer that request so, and the next one too: then reading again does not help."""
+        self.answer(words, number, data)
+        self.answer(words, number + 1, data)
+
     def write(self, session: Any, data: bytes) -> Any:
         """Send, and let happen what is planned."""
         self._canned = None

@@ -23,6 +23,7 @@ _COMMANDS = {
     "check": ("benchrun.cli.check", "Read sequences, benches, kits and masks, and report every problem."),
     "keys": ("benchrun.cli.keys", "Make, list and trust the keys that sign records."),
     "rehearse": ("benchrun.cli.rehearse", "Run a sequence against the simulated bench."),
+    "resume": ("benchrun.cli.resume", "Take up runs that broke off, or close them as invalid records."),
     "run": ("benchrun.cli.run", "Run a sequence at real instruments."),
     "sequences": ("benchrun.cli.sequences", "List what can be called by name."),
 }

@@ -14,7 +14,7 @@ __all__ = ["command"]
 @click.command("rehearse")
 @click.argument("sequence")
 @click.option(
-    "--bench", default="workshop", show_default=True, help="Bench whose simulation is used: name or file."
+    "--bench", help="Bench whose simulation is used: name or file; by default the first that will do."
 )
 @click.option(
     "--unit", "units", multiple=True, metavar="SERIAL", help="Unit to test; may be given several times."
@@ -32,7 +32,7 @@ __all__ = ["command"]
 @common
 def command(
     sequence: str,
-    bench: str,
+    bench: str | None,
     units: tuple[str, ...],
     seed: int,
     faults: tuple[str, ...],
@@ -51,12 +51,12 @@ def command(
     import datetime
 
     from benchrun.cli.running import report_run
-    from benchrun.engine.plan import make_plan
+    from benchrun.engine.job import Job, Orders
+    from benchrun.engine.plan import bench_for, make_plan
     from benchrun.engine.rehearsal import prepare_rehearsal
-    from benchrun.engine.run import Job
     from benchrun.record.keys import KeyStore
 
-    plan = make_plan(sequence, bench, datetime.date.today())
+    plan = make_plan(sequence, bench or bench_for(sequence), datetime.date.today())
     rehearsal, store = prepare_rehearsal(plan.bench, seed, faults), KeyStore()
     return report_run(
         lambda sink: Job(
@@ -70,6 +70,7 @@ def command(
             sink=sink,
             library=rehearsal.library,
             seed=seed,
+            orders=Orders(faults=faults),
         ),
         as_json,
     )

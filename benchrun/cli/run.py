@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from benchrun.record.keys import KeyStore
     from benchrun.record.signer import Signer
 
-__all__ = ["command"]
+__all__ = ["command", "signer_of"]
 
 
 @click.command("run")
@@ -49,9 +49,9 @@ def command(
 
     from benchrun.cli.running import ask, report_run
     from benchrun.clock import SystemClock
+    from benchrun.engine.job import Job, Orders
     from benchrun.engine.operators import Nobody, Person
     from benchrun.engine.plan import make_plan
-    from benchrun.engine.run import Job
     from benchrun.record.keys import KeyStore
 
     plan, store = make_plan(sequence, bench, datetime.date.today()), KeyStore()
@@ -64,15 +64,17 @@ def command(
             clock=SystemClock(),
             records=records,
             signer=lambda origin: (
-                _signer(store, key, unattended) if origin == "measured" else store.rehearsal()
+                signer_of(store, key, unattended) if origin == "measured" else store.rehearsal()
             ),
             sink=sink,
+            orders=Orders(key=key or "", unattended=unattended),
         ),
         as_json,
     )
 
 
-def _signer(store: KeyStore, name: str | None, unattended: bool) -> Signer:
+def signer_of(store: KeyStore, name: str | None, unattended: bool) -> Signer:
+    """The key of a run at real instruments; its passphrase is asked for where somebody is there."""
     import os
     import sys
 

@@ -3,16 +3,19 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 if TYPE_CHECKING:
     from benchrun.engine.events import Sink
-    from benchrun.engine.run import Job
+    from benchrun.engine.job import Job
+    from benchrun.engine.plan import Plan
+    from benchrun.engine.story import Story
 
-__all__ = ["ask", "report_run"]
+__all__ = ["ask", "job_for", "report_jobs", "report_run"]
 
 
 def ask(request: str) -> str:
@@ -40,14 +43,76 @@ def report_run(job: Callable[[Sink], Job], as_json: bool) -> int:
     as_json
         The document on standard output and nothing else there.
     """
+    return report_jobs([job], as_json)
+
+
+def report_jobs(jobs: Sequence[Callable[[Sink], Job]], as_json: bool) -> int:
+    """Run jobs one after the other, show them, and give the exit code: the greatest of all units.
+
+    Parameters
+    ----------
+    jobs
+        Each makes its job from the sink that shows it.
+    as_json
+        One document on standard output and nothing else there.
+    """
     from benchrun.engine.run import run
     from benchrun.report.document import document
     from benchrun.report.screen import Screen
 
     screen = Screen(sys.stderr if as_json else sys.stdout, quiet=as_json)
-    outcomes = run(job(screen.show))
+    outcomes = [outcome for job in jobs for outcome in run(job(screen.show))]
     if as_json:
-        click.echo(document(outcomes))
+        click.echo(document(outcomes) if outcomes else '{"conclusion": null, "units": []}')
     for outcome in outcomes:
         screen.finish(outcome)
-    return max(outcome.exit_code for outcome in outcomes)
+    return max((outcome.exit_code for outcome in outcomes), default=0)
+
+
+def job_for(
+    story: Story, plan: Plan, records: Path, key: str | None, unattended: bool
+) -> Callable[[Sink], Job]:
+    """The job that takes a run up again, as the run itself was started.
+
+    Parameters
+    ----------
+    story, plan
+        What was done, and what was planned.
+    records
+        Folder of records.
+    key, unattended
+        Override how it was started.
+    """
+    from benchrun.cli.run import signer_of
+    from benchrun.clock import Clock, SystemClock
+    from benchrun.engine.job import Job
+    from benchrun.engine.operators import Nobody, Operator, Person
+    from benchrun.engine.rehearsal import prepare_rehearsal
+    from benchrun.record.keys import KeyStore
+
+    store, orders = KeyStore(), story.orders
+    alone = unattended or orders.unattended
+    clock: Clock = SystemClock()
+    hands: Operator = Nobody() if alone or story.closing else Person(ask)
+    library: object = None
+    if story.rehearsal:
+        library = object()  # nothing is opened where a run is only closed: its world is gone
+        if not story.closing:
+            rehearsal = prepare_rehearsal(plan.bench, story.facts["seed"], orders.faults)
+            clock, hands, library = rehearsal.clock, rehearsal.hands, rehearsal.library
+    return lambda sink: Job(
+        plan=plan,
+        units=story.serials,
+        operator_name=story.facts["operator"],
+        hands=hands,
+        clock=clock,
+        records=records,
+        signer=lambda origin: (
+            signer_of(store, key or orders.key or None, alone) if origin == "measured" else store.rehearsal()
+        ),
+        sink=sink,
+        library=library,
+        seed=story.facts["seed"],
+        orders=orders,
+        story=story,
+    )

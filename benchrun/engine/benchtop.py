@@ -8,12 +8,15 @@ from types import TracebackType
 from typing import Any
 
 from benchrun.clock import Clock
-from benchrun.errors import IdentityError, InstrumentError, InvalidMeasurement
+from benchrun.engine.locks import Held, take
+from benchrun.engine.steady import SteadyAnalyzer
+from benchrun.errors import BenchError, IdentityError, InstrumentError, InvalidMeasurement
 from benchrun.instruments.analyzer import NetworkAnalyzer
 from benchrun.instruments.dialect import Dialect
 from benchrun.instruments.generator import SignalGenerator
-from benchrun.instruments.scalar_dialects import GeneratorDialect, SpectrumDialect
+from benchrun.instruments.scalar_dialects import GeneratorDialect, SpectrumDialect, SupplyDialect
 from benchrun.instruments.spectrum import SpectrumAnalyzer
+from benchrun.instruments.supply import Supply
 from benchrun.scpi.identity import Identity
 from benchrun.scpi.opening import open_manager, open_session
 from benchrun.scpi.session import Session
@@ -48,6 +51,8 @@ class Benchtop:
         Bench time.
     others
         Dialects of the other instruments to open, by role.
+    who, what
+        For whoever finds the instruments taken.
     """
 
     def __init__(
@@ -57,20 +62,30 @@ class Benchtop:
         library: Any,
         clock: Clock,
         others: Mapping[str, FileModel] | None = None,
+        who: str = "somebody",
+        what: str = "a look at the bench",
     ) -> None:
         self.bench = bench
+        self._specs = {str(role): spec for role, spec in bench.instruments.items()}
         self.dialect = dialect
         self.others = dict(others or {})
         self.library = library
         self.clock = clock
         self.transcript = Transcript()
         self.found: tuple[Found, ...] = ()
+        self.who, self.what = who, what
+        self.held = Held()
+        """Locks; a rehearsal has its instruments to itself and takes none."""
+        self._closed = False
+        self.repeats: list[str] = []
+        """What was asked once more because the line had failed."""
         self.ready = False
         """Whether the whole bench was opened and brought into a known state."""
         self._sessions: dict[str, Session] = {}
         self.analyzer: NetworkAnalyzer | None = None
         self.generator: SignalGenerator | None = None
         self.spectrum: SpectrumAnalyzer | None = None
+        self.supply: Supply | None = None
 
     @property
     def origin(self) -> str:
@@ -96,12 +111,10 @@ class Benchtop:
             If another instrument stands there than the bench file says.
         TransportError, ReplyError, InstrumentError
         """
-        roles = (*(("analyzer",) if self.dialect is not None else ()), *self.others)
-        for role in roles:
-            spec = self.bench.instruments[role]
-            manager = open_manager(self.library if self.library is not None else spec.library)
-            session = open_session(manager, spec.resource, self.clock, self.transcript)
-            self._sessions[role] = session
+        self.found = ()
+        for role in self.roles:
+            spec = self._specs[role]
+            session = self._open_line(role)
             found = Found(role, spec.resource, session.identity())
             self.found = (*self.found, found)
             tell(found)
@@ -109,20 +122,56 @@ class Benchtop:
         agreed()
         # From here on they are ours; to another instrument nothing is ever sent, not even "source off".
         if self.dialect is not None:
-            self.analyzer = NetworkAnalyzer(self._sessions["analyzer"], self.dialect)
+            self.analyzer = SteadyAnalyzer(
+                self._sessions["analyzer"], self.dialect, self._recovered, self.repeats
+            )
             self.analyzer.replayed = self.found[0].identity.origin == "recorded"
         generator, spectrum = self.others.get("generator"), self.others.get("spectrum analyzer")
         if isinstance(generator, GeneratorDialect):
             self.generator = SignalGenerator(self._sessions["generator"], generator)
         if isinstance(spectrum, SpectrumDialect):
-            self.spectrum = SpectrumAnalyzer(self._sessions["spectrum analyzer"], spectrum)
+            can = self.bench.instruments["spectrum analyzer"].range
+            most = can.power[1] if can and can.power else 20.0
+            self.spectrum = SpectrumAnalyzer(self._sessions["spectrum analyzer"], spectrum, most)
+        supply = self.others.get("supply")
+        if isinstance(supply, SupplyDialect):
+            self.supply = Supply(self._sessions["supply"], supply)
         for instrument in self._instruments():
             instrument.preset()
         self.ready = True
 
-    def _instruments(self) -> tuple[NetworkAnalyzer | SignalGenerator | SpectrumAnalyzer, ...]:
-        """What is ours, the sources of the greatest level first: the order of making safe."""
-        every = (self.generator, self.analyzer, self.spectrum)
+    @property
+    def roles(self) -> tuple[str, ...]:
+        """What is opened."""
+        return (*(("analyzer",) if self.dialect is not None else ()), *self.others)
+
+    def _open_line(self, role: str) -> Session:
+        spec = self._specs[role]
+        if role in self._sessions:
+            self._sessions[role].close()
+        manager = open_manager(self.library if self.library is not None else spec.library)
+        self._sessions[role] = open_session(manager, spec.resource, self.clock, self.transcript)
+        return self._sessions[role]
+
+    def _recovered(self, lost: bool, role: str = "analyzer") -> Session:
+        """A line that works again, to the instrument that was there before.
+
+        Raises
+        ------
+        InvalidMeasurement
+            If another one answers.
+        TransportError, ReplyError
+        """
+        if lost:
+            self._open_line(role)
+        else:
+            self._sessions[role].clear()
+        self._confirm(next(found for found in self.found if found.role == role))
+        return self._sessions[role]
+
+    def _instruments(self) -> tuple[NetworkAnalyzer | SignalGenerator | SpectrumAnalyzer | Supply, ...]:
+        """What is ours, in the order of making safe: RF first, the supply of the driven unit after it."""
+        every = (self.generator, self.analyzer, self.supply, self.spectrum)
         return tuple(instrument for instrument in every if instrument is not None)
 
     def confirm(self) -> None:
@@ -135,12 +184,15 @@ class Benchtop:
         TransportError, ReplyError
         """
         for found in self.found:
-            again = self._sessions[found.role].identity()
-            if again != found.identity:
-                raise InvalidMeasurement(
-                    f"{found.resource} was {found.identity.text!r} at the start and is {again.text!r} now.",
-                    "Find out who changed or restarted it, then run again.",
-                )
+            self._confirm(found)
+
+    def _confirm(self, found: Found) -> None:
+        again = self._sessions[found.role].identity()
+        if again != found.identity:
+            raise InvalidMeasurement(
+                f"{found.resource} was {found.identity.text!r} at the start and is {again.text!r} now.",
+                "Find out who changed or restarted it, then run again.",
+            )
 
     @property
     def ours(self) -> bool:
@@ -148,16 +200,40 @@ class Benchtop:
         return bool(self._instruments())
 
     def make_safe(self) -> tuple[str, ...]:
-        """Switch every source off; what could not be switched off is said."""
-        left = [i.make_safe() for i in self._instruments() if not i.session.closed]
+        """Switch every source off, one after the other; what could not be switched off is said.
+
+        A line that was lost is made anew once, if the same instrument answers. A fault at one instrument, of
+        whatever kind, never keeps the next from being switched off.
+        """
+        left = () if self._closed else tuple(self._made_safe(i) for i in self._instruments())
         return tuple(text for text in left if text)
 
+    def _made_safe(self, instrument: NetworkAnalyzer | SignalGenerator | SpectrumAnalyzer | Supply) -> str:
+        try:
+            left = instrument.make_safe()
+            if not left:
+                return ""
+            try:
+                role = next(role for role, s in self._sessions.items() if s is instrument.session)
+                instrument.session = self._recovered(True, role)
+            except BenchError:
+                return left
+            return instrument.make_safe()
+        except Exception as error:
+            name, said = instrument.session.name, f"{type(error).__name__}: {error}"
+            return f"{name} could not be made safe ({said}): switch it off by hand"
+
     def close(self) -> None:
-        """Close the lines."""
+        """Close the lines; twice is once."""
+        self._closed = True
         for session in self._sessions.values():
             session.close()
+        self.held.release()
 
     def __enter__(self) -> Benchtop:
+        if self.library is None:
+            names = tuple(self._specs[role].resource for role in self.roles)
+            self.held = take(names, self.who, self.what)
         return self
 
     def __exit__(
@@ -195,7 +271,7 @@ def ask_health(top: Benchtop, tell: Callable[[Found], None]) -> list[str]:
     """
     top.open(tell)
     troubles: list[str] = []
-    for instrument in (top.analyzer, top.generator, top.spectrum):
+    for instrument in (top.analyzer, top.generator, top.supply, top.spectrum):
         if instrument is not None:
             try:
                 instrument.session.raise_errors("preset")

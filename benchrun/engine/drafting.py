@@ -22,11 +22,10 @@ from benchrun.record.payload import (
     UnitEntry,
     utc_text,
 )
-from benchrun.scpi.transcript import Transcript
 from benchrun.uncertainty.decision import Conclusion
 
 if TYPE_CHECKING:
-    from benchrun.engine.run import _UnitRun
+    from benchrun.engine.unit import UnitRun
 
 __all__ = ["Ending", "draft_of"]
 
@@ -69,7 +68,7 @@ def _environment() -> bytes:
     return (json.dumps(facts, indent=1) + "\n").encode()
 
 
-def draft_of(unit: _UnitRun, ending: Ending, started: datetime, wall_s: float) -> Draft:
+def draft_of(unit: UnitRun, ending: Ending, started: datetime, wall_s: float) -> Draft:
     """Put a record together.
 
     Parameters
@@ -89,8 +88,7 @@ def draft_of(unit: _UnitRun, ending: Ending, started: datetime, wall_s: float) -
     results = result_files(state)
     for path, contents in (*plan.inputs.values(), *results.values()):
         files[path] = contents
-    transcript = Transcript(unit.top.transcript.exchanges[unit.said :])
-    files["transcript.jsonl"] = transcript.as_json_lines()
+    files["transcript.jsonl"] = unit.transcript
     files["journal.jsonl"] = unit.emit.as_json_lines()
     files["environment.json"] = _environment()
     if unit.fault:
@@ -102,13 +100,13 @@ def draft_of(unit: _UnitRun, ending: Ending, started: datetime, wall_s: float) -
         reason=ending.reason,
         advice=ending.advice,
         figures=state.figures,
-        origin=unit._origin,  # type: ignore[arg-type]  # one of the three words
+        origin=unit.origin,  # type: ignore[arg-type]  # one of the three words
         seed=job.seed,
         operator=job.operator_name,
         bench=plan.bench.model.bench,
         started_utc=utc_text(started),
         ended_utc=utc_text(job.clock.utc()),
-        bench_seconds=unit.emit.seconds(),
+        bench_seconds=unit.bench_s,
         wall_seconds=round(wall_s, 6),
         instruments=tuple(
             InstrumentEntry(
@@ -129,6 +127,10 @@ def draft_of(unit: _UnitRun, ending: Ending, started: datetime, wall_s: float) -
         software=software(),
         plan=plan.digest,
         residual_seed=plan.procedure.noise_seed,
+        left_on=unit.left_on,
+        repeated=unit.repeats,
+        resumed=tuple(unit.past.notes) if unit.past is not None else (),
+        retest=unit.retest,
     )
     stored = unit.shared.stored
     twins = {

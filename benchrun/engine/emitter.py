@@ -1,12 +1,15 @@
-"""Telling what happens: to whoever listens, and into the journal that the record keeps."""
+"""Telling what happens: to whoever listens, and into the journals that disk and record keep."""
 
 from __future__ import annotations
 
+import contextlib
 import dataclasses
 import json
+from collections.abc import Iterator
 
 from benchrun.clock import Clock
 from benchrun.engine.events import Event, Sink
+from benchrun.engine.journal import Journal
 from benchrun.evaluate.judgement import JudgedFigure
 
 __all__ = ["Emitter"]
@@ -28,22 +31,49 @@ class Emitter:
         Who listens.
     clock
         Bench time.
+    journal
+        The journal on disk, if there is one.
     """
 
-    def __init__(self, sink: Sink, clock: Clock) -> None:
+    def __init__(self, sink: Sink, clock: Clock, journal: Journal | None = None) -> None:
         self._sink: Sink | None = sink
         self._clock = clock
+        self._journal = journal
         self.start_s = clock.seconds()
-        self.events: list[Event] = []
+        self._lines: list[str] = []
+        self._muted = False
 
     def seconds(self) -> float:
         """Bench seconds since the run began."""
         return round(self._clock.seconds() - self.start_s, 6)
 
+    def recall(self, lines: list[str]) -> None:
+        """Begin with what an earlier process told: lines of its journal."""
+        self._lines = [*lines]
+
+    @property
+    def silent(self) -> bool:
+        """Whether nothing is told now."""
+        return self._muted
+
+    @contextlib.contextmanager
+    def muted(self, wanted: bool = True) -> Iterator[None]:
+        """Within it nothing is told or kept: what happens has happened before."""
+        before, self._muted = self._muted, self._muted or wanted
+        try:
+            yield
+        finally:
+            self._muted = before
+
     def __call__(self, event: Event) -> None:
         """Tell."""
+        if self._muted:
+            return
         event = dataclasses.replace(event, at_s=self.seconds())
-        self.events.append(event)
+        line = json.dumps(event.as_json(), ensure_ascii=False, default=_plain)
+        self._lines.append(line)
+        if self._journal is not None:
+            self._journal.line("event", text=line)
         if self._sink is not None:
             try:
                 self._sink(event)
@@ -51,7 +81,5 @@ class Emitter:
                 self._sink = None
 
     def as_json_lines(self) -> bytes:
-        """The journal: one JSON object a line."""
-        return "".join(
-            json.dumps(e.as_json(), ensure_ascii=False, default=_plain) + "\n" for e in self.events
-        ).encode()
+        """The journal as the record keeps it: one JSON object a line."""
+        return "".join(f"{line}\n" for line in self._lines).encode()

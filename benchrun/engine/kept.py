@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 
-from benchrun.evaluate.readings import Raw, encode, suffix
+from benchrun.evaluate.readings import Raw, decode, encode, suffix
 from benchrun.record.payload import ReadingEntry, safe_name
 from benchrun.rf.twoport import FloatArray
 
@@ -42,6 +42,12 @@ class Reading:
         contents = encode(f_hz, raw, f"raw: {hookup}")
         return cls(step, hookup, raw, contents, hashlib.sha256(contents).hexdigest(), taken_s)
 
+    @classmethod
+    def restored(cls, step: str, hookup: str, contents: bytes, ending: str, taken_s: float) -> Reading:
+        """From its file, for example out of a journal."""
+        raw = decode(contents, f"{step} {hookup}{ending}")
+        return cls(step, hookup, raw, contents, hashlib.sha256(contents).hexdigest(), taken_s)
+
     def entry(self, number: int, start_s: float) -> ReadingEntry:
         """As the payload lists it: the time counts from the run's start, negative for what is older."""
         file = f"raw/{number:02d}-{safe_name(f'{self.step} {self.hookup}')}{suffix(self.raw)}"
@@ -51,13 +57,22 @@ class Reading:
 
 @dataclass(slots=True)
 class Kept:
-    """The readings of one unit's record, in the order of taking."""
+    """The readings of one unit's record, in the order of taking.
+
+    Parameters
+    ----------
+    safe
+        Called with each that is taken: the journal writes it down.
+    """
 
     readings: list[Reading] = field(default_factory=list)
+    safe: Callable[[Reading], None] | None = None
 
     def add(self, reading: Reading) -> Reading:
         """Keep one."""
         self.readings.append(reading)
+        if self.safe is not None:
+            self.safe(reading)
         return reading
 
     def extend(self, readings: Iterable[Reading]) -> None:

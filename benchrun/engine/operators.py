@@ -8,7 +8,21 @@ from typing import Protocol
 from benchrun.errors import InputError, Stopped
 from benchrun.hookup import Connection, Hookup
 
-__all__ = ["Nobody", "Operator", "Person"]
+__all__ = ["Mistyped", "Nobody", "Operator", "Person"]
+
+
+class Mistyped(Exception):
+    """The serial number of the unit on the bench is another one.
+
+    Parameters
+    ----------
+    serial
+        The right one.
+    """
+
+    def __init__(self, serial: str) -> None:
+        super().__init__(serial)
+        self.serial = serial
 
 
 class Operator(Protocol):
@@ -41,6 +55,8 @@ class Operator(Protocol):
         ------
         Stopped
             If the operator ends the run.
+        Mistyped
+            If the serial number was wrong.
         """
         ...
 

@@ -2,149 +2,37 @@
 
 from __future__ import annotations
 
-import tempfile
-import time
-import traceback
-from collections.abc import Callable
-from dataclasses import dataclass, field
-from datetime import datetime
+import contextlib
+import os
+from collections.abc import Iterator
+from concurrent.futures import Future, ThreadPoolExecutor
+from dataclasses import asdict
+from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any
 
-from benchrun.clock import Clock
-from benchrun.engine.benchtop import Benchtop, Found
-from benchrun.engine.drafting import Ending, draft_of
-from benchrun.engine.emitter import Emitter
-from benchrun.engine.events import (
-    Cautioned,
-    InstrumentFound,
-    MadeSafe,
-    Noted,
-    RecordWritten,
-    RunEnded,
-    RunStarted,
-    Sink,
-    StepEnded,
-    StepStarted,
-)
-from benchrun.engine.kept import Kept, Reading
-from benchrun.engine.operators import Operator
-from benchrun.engine.plan import Plan
-from benchrun.engine.steps import EXECUTIONS, AtWork
+from benchrun.engine.benchtop import Benchtop
+from benchrun.engine.job import Job, Outcome, Turn
+from benchrun.engine.journal import SUFFIX, Journal
 from benchrun.engine.stopping import StopSignals
-from benchrun.errors import BenchError, InputError, InvalidMeasurement, RecordError, Stopped
-from benchrun.evaluate.judgement import JudgedFigure
+from benchrun.engine.story import EDITION, PastUnit
+from benchrun.engine.unit import Shared, UnitRun
+from benchrun.errors import InputError, RecordError, RecordNotWritten, Stopped
 from benchrun.evaluate.state import State
 from benchrun.record.payload import safe_name
-from benchrun.record.signer import Signer
-from benchrun.record.storage import DISK, Storage
-from benchrun.record.write import RecordRescued, refusal, write_or_rescue
+from benchrun.record.verify import read
+from benchrun.record.write import refusal
 from benchrun.sequence.checks import check_serial
-from benchrun.sequence.models import CAUTIONS
-from benchrun.sequence.steps import Calibrate
 from benchrun.uncertainty.decision import Conclusion
 
 __all__ = ["Job", "Outcome", "run"]
-
-
-@dataclass(frozen=True, slots=True)
-class Job:
-    """What is to be run, where, and who takes part.
-
-    Parameters
-    ----------
-    plan
-        The plan.
-    units
-        Serial numbers, tested one after the other.
-    operator_name
-        Goes into the record.
-    hands
-        Who connects things.
-    clock
-        Bench time.
-    records
-        Folder of records.
-    signer
-        Gives the key for ``"measured"``, ``"simulated"`` or ``"recorded"`` readings; raises
-        :class:`InputError` if there is none.
-    sink
-        Who is told what happens.
-    library
-        A VISA library instead of the bench file's; the rehearsal's.
-    seed
-        Of the simulated bench.
-    storage
-        Where records are written.
-    """
-
-    plan: Plan
-    units: tuple[str, ...]
-    operator_name: str
-    hands: Operator
-    clock: Clock
-    records: Path
-    signer: Callable[[str], Signer]
-    sink: Sink
-    library: Any = None
-    seed: int | None = None
-    storage: Storage = DISK
-
-
-@dataclass(frozen=True, slots=True)
-class Outcome:
-    """What one unit's run came to.
-
-    Parameters
-    ----------
-    unit
-        Serial number.
-    conclusion, reason, advice
-        The worst of all figures, or why there is none.
-    figures
-        All judged limits.
-    origin
-        ``"measured"``, ``"simulated"`` or ``"recorded"``.
-    record
-        The record's folder; None if there is none.
-    trouble
-        Why there is no record where it should be.
-    left_on
-        Sources that could not be switched off.
-    """
-
-    unit: str
-    conclusion: Conclusion
-    reason: str = ""
-    advice: str = ""
-    figures: tuple[JudgedFigure, ...] = ()
-    origin: str = "measured"
-    record: Path | None = None
-    trouble: str = ""
-    left_on: tuple[str, ...] = ()
-
-    @property
-    def exit_code(self) -> int:
-        """5 if the record is not where it should be, else that of the conclusion."""
-        return 5 if self.trouble else self.conclusion.exit_code
-
-
-@dataclass(slots=True)
-class _Shared:
-    """What one calibration leaves for the units after the first: results, readings, their age and files."""
-
-    state: State
-    readings: dict[str, tuple[Reading, ...]] = field(default_factory=dict)
-    taken_s: dict[str, float] = field(default_factory=dict)
-    stored: dict[str, tuple[bytes, Path]] = field(default_factory=dict)
-    signer: Signer | None = None
 
 
 def run(job: Job) -> tuple[Outcome, ...]:
     """Run the plan on every unit.
 
     Once the bench is opened every unit's run ends in a record, whatever happens; every source is off
-    before this returns or raises.
+    before this returns or raises. If the process does not live to its end, a journal in the folder of records
+    holds what counts, and a later job with its :class:`~benchrun.engine.story.Story` goes on.
 
     Parameters
     ----------
@@ -160,207 +48,166 @@ def run(job: Job) -> tuple[Outcome, ...]:
     ------
     InputError
         For a serial number, hands or a key that do not fit; nothing was measured.
+    Busy
+        If another run holds an instrument; nothing was sent to it.
     RecordNotWritten
         If the records folder cannot be written; nothing was measured.
     """
-    for serial in job.units:
-        check_serial(serial, job.plan.sequence.model)
-        job.hands.offer(serial)
-    job.hands.check(job.plan.hookups)
-    _prepare(job.records)
-    outcomes: list[Outcome] = []
-    shared = _Shared(State(job.plan.procedure))
-    plan = job.plan
-    top = Benchtop(plan.bench.model, plan.dialect, job.library, job.clock, plan.others)
-    with StopSignals() as stop, top:
+    story, plan = job.story, job.plan
+    if story is None or not story.closing:
         for serial in job.units:
-            outcomes.append(_UnitRun(job, serial, top, shared, stop).go())
-            if stop.asked or not top.ready or outcomes[-1].conclusion is Conclusion.STOPPED:
-                break
-    return tuple(outcomes)
+            check_serial(serial, plan.sequence.model)
+            job.hands.offer(serial)
+        job.hands.check(plan.hookups)
+    what = f"{plan.sequence.model.sequence} on {plan.bench.model.bench}"
+    top = Benchtop(
+        plan.bench.model, plan.dialect, job.library, job.clock, plan.others, job.operator_name, what
+    )
+    with StopSignals() as stop, top, _journal(job) as journal:
+        return _Series(job, top, stop, journal).go()
 
 
-def _prepare(records: Path) -> None:
-    """Find out now, not after an hour of measuring, that records cannot be kept."""
-    try:
-        records.mkdir(parents=True, exist_ok=True)
-        with tempfile.TemporaryDirectory(prefix=".probe-", dir=records):
-            pass
-    except OSError as error:
-        raise refusal(records, error) from error
+class _Series:
+    """Unit after unit."""
 
+    def __init__(self, job: Job, top: Benchtop, stop: StopSignals, journal: Journal) -> None:
+        self.job, self.top, self.stop, self.journal = job, top, stop, journal
+        self.shared = Shared(State(job.plan.procedure))
+        self.outcomes: list[Outcome] = []
+        self.late: list[tuple[int, UnitRun, Future[Outcome]]] = []
 
-class _UnitRun:
-    """One unit's run."""
+    def go(self) -> tuple[Outcome, ...]:
+        """All of them."""
+        with contextlib.ExitStack() as stack:
+            clerk = stack.enter_context(ThreadPoolExecutor(1)) if self.job.desk is not None else None
+            try:
+                for number, (turn, past) in enumerate(self._turns()):
+                    self._one(number, turn, past, clerk)
+                    last = self.outcomes[-1]
+                    if self.stop.asked or not self._goes_on(past) or last.conclusion is Conclusion.STOPPED:
+                        break
+                    if self.journal.failure is not None:
+                        break
+            finally:
+                self._collect(wait=True)
+        return tuple(self.outcomes)
 
-    def __init__(self, job: Job, serial: str, top: Benchtop, shared: _Shared, stop: StopSignals) -> None:
-        self.job, self.serial, self.top, self.shared, self.stop = job, serial, top, shared, stop
-        self.emit = Emitter(job.sink, job.clock)
-        self.state = shared.state.next_unit()
-        self.state.thorough = not shared.state.calibrations
-        self.kept = Kept()
-        self.signer: Signer | None = None
-        self.fault = ""
-        self.said = len(top.transcript.exchanges)
+    def _goes_on(self, past: PastUnit | None) -> bool:
+        """Whether the bench is there for the next unit; one that was only recalled did not need it."""
+        return self.top.ready or past is not None
 
-    def go(self) -> Outcome:
-        """Measure, make safe, keep."""
-        started, began = self.job.clock.utc(), time.perf_counter()
-        ending = self._measure()
-        left_on = self.top.make_safe()
-        if self.top.ours:
-            self.emit(MadeSafe(left_on=left_on))
-        figures = self.state.figures
-        self.emit(
-            RunEnded(
-                conclusion=ending.conclusion.value,
-                reason=ending.reason,
-                advice=ending.advice,
-                figures=figures,
-            )
-        )
-        wall_s = time.perf_counter() - began
-        record, trouble = self._keep(ending, started, wall_s)
-        return Outcome(
-            unit=self.serial,
-            conclusion=ending.conclusion,
-            reason=ending.reason,
-            advice=ending.advice,
-            figures=figures,
-            origin=self._origin,
-            record=record,
-            trouble=trouble,
-            left_on=left_on,
-        )
+    def _turns(self) -> Iterator[tuple[Turn, PastUnit | None]]:
+        story, job = self.job.story, self.job
+        past = story.units if story is not None else []
+        for unit in past:
+            yield Turn(unit.serial, unit.retest), unit
+        if story is not None and story.closing:
+            return
+        for serial in job.units[len(past) :]:
+            yield Turn(serial), None
+        while job.desk is not None:
+            self._collect()
+            try:
+                with self.stop.armed():
+                    turn = job.desk.next()
+            except Stopped:
+                return
+            if turn is None:
+                return
+            yield turn, None
 
-    @property
-    def _origin(self) -> str:
-        """From the instruments' own mouths; before any has spoken, what the run was started as."""
-        if self.top.found:
-            return self.top.origin
-        return "simulated" if self.job.library is not None else "measured"
-
-    def _measure(self) -> Ending:
-        """Everything that may go wrong; comes back with how it ended, and raises only for want of a key."""
-        try:
-            with self.stop.armed():
-                self._begin()
-                self._steps()
-                self.top.confirm()
-            return Ending(self.state.conclusion)
-        except Stopped as stopped:
-            return Ending(Conclusion.STOPPED, stopped.reason)
-        except InvalidMeasurement as error:
-            return Ending(Conclusion.INVALID, error.reason, error.advice)
-        except InputError as error:
-            if self.signer is None and self.top.found:
-                raise  # nothing was measured yet
-            return Ending(Conclusion.INVALID, str(error), "Correct it, then run again.")
-        except BenchError as error:
-            return Ending(Conclusion.INVALID, str(error), "See to it, then run again.")
-        except Exception as error:  # a fault of the program: the readings taken so far are kept all the same
-            self.fault = traceback.format_exc()
-            reason = f"a fault of the program: {type(error).__name__}: {error}"
-            return Ending(
-                Conclusion.INVALID, reason, "Report it with the record; fault.txt in it says where."
-            )
-
-    def _begin(self) -> None:
-        plan = self.job.plan
-        sequence, unit = plan.sequence.model, plan.sequence.model.unit
-        self.emit(
-            RunStarted(
-                sequence=sequence.sequence,
-                title=sequence.title,
-                unit=self.serial,
-                part=unit.part,
-                bench=plan.bench.model.title,
-                operator=self.job.operator_name,
-                simulated=self.job.library is not None,
-                seed=self.job.seed,
-                steps=len(sequence.steps),
-                plan=plan.digest,
-            )
-        )
-        for text in (*sequence.caution_texts, *(CAUTIONS.get(c, c) for c in plan.bench.model.cautions)):
-            self.emit(Cautioned(text=text))
-        if not self.top.ready:
-            self.top.open(self._tell, self._take_key)
+    def _one(self, number: int, turn: Turn, past: PastUnit | None, clerk: ThreadPoolExecutor | None) -> None:
+        unit = UnitRun(self.job, turn, number, self.top, self.stop, self.journal, self.shared, past)
+        if past is not None and past.record:
+            self.outcomes.append(self._recalled(unit, past))
+            return
+        self.outcomes.append(unit.measure())
+        self.job.concluded(self.outcomes[-1])
+        if clerk is None:
+            self._settled(number, unit, unit.keep())
         else:
-            for found in self.top.found:
-                self._tell(found)
-            self._take_key()
-        self.job.hands.offer(self.serial)
+            self.late.append((number, unit, clerk.submit(unit.keep)))
 
-    def _tell(self, found: Found) -> None:
-        self.emit(InstrumentFound(role=found.role, resource=found.resource, identity=found.identity.text))
-
-    def _take_key(self) -> None:
-        self.signer = self.shared.signer = self.shared.signer or self.job.signer(self._origin)
-
-    def _steps(self) -> None:
-        plan = self.job.plan
-        work = AtWork(
-            procedure=plan.procedure,
-            state=self.state,
-            analyzer=self.top.analyzer,
-            operator=self.job.hands,
-            clock=self.job.clock,
-            kept=self.kept,
-            emit=self.emit,
-            generator=self.top.generator,
-            spectrum=self.top.spectrum,
-        )
-        for number, step in enumerate(plan.sequence.model.steps, 1):
-            execution = EXECUTIONS[step.kind]
-            self.emit(
-                StepStarted(number=number, kind=step.kind, step=step.name, what=execution.words(step, work))
-            )
-            if isinstance(step, Calibrate) and self._still_good(step):
-                self.kept.extend(self.shared.readings[step.name])
-            else:
-                if isinstance(step, Calibrate):
-                    self.state.thorough = True
-                execution.carry_out(step, work)
-                if isinstance(step, Calibrate):
-                    self._share(step)
-            self.emit(StepEnded(number=number, step=step.name))
-
-    def _still_good(self, step: Calibrate) -> bool:
-        """Whether a calibration of an earlier unit serves; an old one is made again."""
-        if step.name not in self.shared.readings or step.name not in self.state.calibrations:
-            return False
-        age = self.job.clock.seconds() - self.shared.taken_s[step.name]
-        if step.keep is not None and age > step.keep:
-            return False
-        self.state.agreements[step.name] = self.shared.state.agreements[step.name]
-        self.emit(Noted(text=f"{step.name} serves on, {age / 60:.0f} min old"))
-        return True
-
-    def _share(self, step: Calibrate) -> None:
-        self.shared.readings[step.name] = tuple(r for r in self.kept.readings if r.step == step.name)
-        self.shared.taken_s[step.name] = self.job.clock.seconds()
-        self.shared.state.calibrations[step.name] = self.state.calibrations[step.name]
-        self.shared.state.agreements[step.name] = self.state.agreements[step.name]
-
-    def _keep(self, ending: Ending, started: datetime, wall_s: float) -> tuple[Path | None, str]:
-        """Write the record; what went wrong with it is said, never raised."""
-        sequence = safe_name(self.job.plan.sequence.model.sequence)[:36]  # a name has at most 120 characters
-        name = f"{started:%Y%m%dT%H%M%SZ}-{sequence}-{self.serial}"
+    def _recalled(self, unit: UnitRun, past: PastUnit) -> Outcome:
+        """A unit whose record stands: what it came to, and what it leaves for the next one."""
+        assert self.job.story is not None  # a past comes from a story
+        assert unit.past is not None
+        if self.job.story.rehearsal and not self.job.story.closing:
+            unit.measure()
+        elif not self.job.story.closing:
+            unit.past.bring_calibrations_back()
+        folder = Path(past.record)
         try:
-            signer = self.signer or self.job.signer(self._origin)
-            draft = draft_of(self, ending, started, wall_s)
-            folder = write_or_rescue(draft, self.job.records, name, signer, self.job.storage)
-        except RecordRescued as error:
-            return error.folder, f"{error.message} The record stands in {error.folder}: move it to its place."
-        except (RecordError, InputError) as error:
-            return None, str(error)
-        except Exception as error:  # a fault of the program here must not take the other units' results along
-            return (
-                None,
-                f"the record was not written, by a fault of the program: {type(error).__name__}: {error}",
-            )
-        if not self.shared.stored:
-            self.shared.stored.update({path: (raw, folder / path) for path, raw in draft.files.items()})
-        self.emit(RecordWritten(folder=str(folder), key=signer.key_id))
-        return folder, ""
+            payload = read(folder).payload
+        except RecordError as error:
+            return Outcome(past.serial, Conclusion.INVALID, str(error), trouble=str(error))
+        return Outcome(
+            past.serial, Conclusion(payload.conclusion), payload.reason, payload.advice, payload.figures,
+            payload.origin, folder, "", payload.left_on, payload.bench_seconds,
+        )  # fmt: skip
+
+    def _collect(self, wait: bool = False) -> None:
+        """Hear what became of records that were made while the next unit was connected."""
+        while self.late and (wait or self.late[0][2].done()):
+            number, unit, future = self.late.pop(0)
+            self._settled(number, unit, future.result())
+
+    def _settled(self, number: int, unit: UnitRun, outcome: Outcome) -> None:
+        unit.settle()
+        self.outcomes[number] = outcome
+        self.job.kept(outcome)
+
+
+@contextlib.contextmanager
+def _journal(job: Job) -> Iterator[Journal]:
+    """The journal of a run: kept if the run could not finish, removed if its records stand."""
+    journal = _open(job)
+    try:
+        _begin(job, journal)
+        yield journal
+    except (InputError, RecordNotWritten):  # no key, a full disk: nothing was measured
+        journal.remove()
+        raise
+    except BaseException:
+        journal.close()
+        raise
+    if journal.needed:
+        journal.close()
+    else:
+        journal.remove()
+
+
+def _open(job: Job) -> Journal:
+    """Make the file: it shows now, and not after an hour of measuring, whether records can be kept."""
+    try:
+        if job.story is not None:
+            return job.story.reopen(job.opener)
+        job.records.mkdir(parents=True, exist_ok=True)
+        sequence = safe_name(job.plan.sequence.model.sequence)[:36]
+        name = f".{datetime.now(UTC):%Y%m%dT%H%M%SZ}-{sequence}-{os.urandom(4).hex()}{SUFFIX}"
+        journal = Journal(job.records / name, job.opener)
+        job.storage.sync(job.records)
+    except OSError as error:
+        raise refusal(job.records, error) from error
+    return journal
+
+
+def _begin(job: Job, journal: Journal) -> None:
+    """Write down all that another process needs to take the run up."""
+    plan, utc = job.plan, datetime.now(UTC).isoformat()
+    if job.story is not None:
+        journal.line("taken up", utc=utc, pid=os.getpid())
+        return
+    journal.line(
+        "begun", edition=EDITION, utc=utc, pid=os.getpid(),
+        sequence=str(plan.sequence.path.resolve()), bench=str(plan.bench.path.resolve()),
+        name=plan.sequence.model.sequence, plan=plan.digest, inputs=len(plan.inputs),
+        units=list(job.units), operator=job.operator_name, rehearsal=job.library is not None,
+        seed=job.seed, orders=asdict(job.orders),
+    )  # fmt: skip
+    for logical, (path, raw) in plan.inputs.items():
+        journal.line("input", raw, name=logical, path=path)
+    if journal.failure is not None:
+        cause = journal.failure.__cause__
+        assert isinstance(cause, OSError)
+        raise refusal(job.records, cause) from journal.failure

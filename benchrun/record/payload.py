@@ -198,6 +198,14 @@ class Payload(_Entry):
         Program or library to version.
     plan
         Digest of the resolved plan.
+    left_on
+        Sources that could not be switched off at the end, and what to do by hand.
+    repeated
+        What was asked of an instrument once more, and why.
+    resumed
+        Where the run was taken up again after a break: what stands, what was begun anew, and why.
+    retest
+        Why the unit was tested again.
     """
 
     sequence: SequenceEntry
@@ -222,6 +230,10 @@ class Payload(_Entry):
     software: dict[str, str] = {}
     plan: str
     residual_seed: int = 0
+    left_on: tuple[str, ...] = ()
+    repeated: tuple[str, ...] = ()
+    resumed: tuple[str, ...] = ()
+    retest: str = ""
 
     @model_validator(mode="after")
     def _origin_holds(self) -> Payload:

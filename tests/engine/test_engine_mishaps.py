@@ -70,7 +70,7 @@ BLOCKS = {
 def test_a_reading_that_is_none(workplace, bench, what):
     make, words = BLOCKS[what]
     w = workplace(bench=bench)
-    w.mishaps.answer(READ[bench], 6, make(bench))
+    w.mishaps.twice(READ[bench], 6, make(bench))
     request = "" if words[0].startswith("gave no number") else READ[bench]
     journal = ended(w, w.run(), *words, request, w.job.plan.bench.model.analyzer.resource)
     assert [e["event"] for e in journal][-2:] == ["safe", "run ended"]
@@ -133,7 +133,7 @@ ANSWERS = {
 def test_any_other_answer_may_be_wrong(workplace, what):
     request, data, words = ANSWERS[what]
     w = workplace(units=("HF-0001",))
-    w.mishaps.answer(request, 1, data)
+    w.mishaps.twice(request, 1, data) if what == "no sweep" else w.mishaps.answer(request, 1, data)
     answer = w.run()
     if what.endswith("identity") or what.startswith("identity"):
         assert not any("OUTP" in one or "*RST" in one for one in w.mishaps.requests)
@@ -173,7 +173,7 @@ def test_a_line_that_closes_says_what_stays_on(workplace, bench, number):
 
 def test_readings_taken_before_are_kept(workplace):
     w = workplace()
-    w.mishaps.answer(READ["workshop"], 8, b"")
+    w.mishaps.twice(READ["workshop"], 8, b"")
     journal = ended(w, w.run())
     (record,) = w.records
     assert len(list((record / "raw").iterdir())) == 7
@@ -184,7 +184,7 @@ def test_readings_taken_before_are_kept(workplace):
 
 def test_the_next_unit_is_measured_after_one_that_went_wrong(workplace):
     w = workplace(units=("HF-0001", "HF-0002", "HF-9001"))
-    w.mishaps.answer(READ["workshop"], 9, b"")  # the second unit's reading
+    w.mishaps.twice(READ["workshop"], 9, b"")  # the second unit's reading
     answer = w.run()
     units = answer.document["units"]
     assert [u["conclusion"] for u in units] == ["pass", "invalid", "fail"]

@@ -198,7 +198,7 @@ def test_unattended_units_are_refused_before_anything_is_sent(workplace):
 
 def test_without_a_calibration_no_unit_inherits_figures(workplace):
     w = workplace(UNCORRECTED, units=("HF-0001", "HF-0002"))
-    w.mishaps.answer("TRAC? MATRIX", 2, b"")
+    w.mishaps.twice("TRAC? MATRIX", 2, b"")
     units = w.run().document["units"]
     assert [(u["conclusion"], len(u["figures"])) for u in units] == [("pass", 1), ("invalid", 0)]
     for record in w.records:
