@@ -52,7 +52,7 @@ class Family:
         """
         change: dict[str, Any] = {k: v for k, v in self._changes.get(serial, {}).items() if k != "says"}
         if further:
-            own: Sequence[str] = change.get("faults", self._design.get("faults", ()))
+            own = change.get("faults") or self._design.get("faults") or ()
             change["faults"] = [*own, *further]
         with at(f"{self.where}, {serial}"):
             return build(placed({**self._design, **change}, self._folder), self._draws / serial)

@@ -44,9 +44,9 @@ def filter_(spec: Mapping[str, Any], draws: Draws) -> Part:
     Parameters
     ----------
     spec
-        ``shape``, ``order``, ``ripple`` (dB); ``passes``: low, high or band; ``edge`` or ``center`` and
-        ``width``; ``first``: shunt or series; ``impedance``; ``coil q``, ``capacitor q`` at ``q at``;
-        ``tolerance``, ``drift`` (ppm/K), ``exact``; ``faults`` as of a ladder.
+        ``shape``, ``order``, ``ripple`` (dB); ``passes``: low, high, band or all but a band; ``edge``,
+        or ``center`` and ``width``; ``first``: shunt or series; ``impedance``; ``coil q``, ``capacitor q`` at
+        ``q at``; ``tolerance``, ``drift`` (ppm/K), ``exact``; ``faults`` as of a ladder.
     draws
         For tolerances.
     """
@@ -54,8 +54,9 @@ def filter_(spec: Mapping[str, Any], draws: Draws) -> Part:
         spec, "shape", "order", "ripple", "passes", "edge", "center", "width", "first", "impedance", *_QUALITY
     )
     passes = str(spec.get("passes", "low"))
-    edge = number(spec["center" if passes == "band" else "edge"])
-    width = number(spec["width"]) if passes == "band" else 0.0
+    is_band = passes.endswith("band")
+    edge = number(spec["center" if is_band else "edge"])
+    width = number(spec["width"]) if is_band else 0.0
     elements = scaled(
         _prototype(spec),
         passes,

@@ -21,6 +21,9 @@ _OPEN_JOINT_F = 0.03e-12
 _BRIDGE_OHM, _BRIDGE_H = 5e-3, 0.5e-9
 """A blob of solder."""
 
+_RESONANT_OHM = 1e-12
+"""What is left of a lossless pair exactly at its resonance, so that nothing is divided by zero."""
+
 
 @dataclass(frozen=True)
 class Element:
@@ -46,6 +49,8 @@ class Element:
         Inductance of a resistor's leads.
     broken
         An open solder joint.
+    joined
+        In one branch with the element before it: ``"across"`` it or ``"in line"`` with it.
     """
 
     name: str
@@ -58,6 +63,7 @@ class Element:
     drift_ppm: float = 0.0
     lead_h: float = 0.0
     broken: bool = False
+    joined: str = ""
 
     def impedance(self, f_hz: Real, around: Surroundings) -> Plane:
         """Impedance in ohm, ``(f,)``."""
@@ -88,7 +94,8 @@ def ladder(spec: Mapping[str, Any], draws: Draws) -> Part:
     ----------
     spec
         ``elements``: a list of ``{name, place, coil | capacitor | resistor, q, q at, resonance, tolerance,
-        spread, drift, lead}``; ``spread``: ``normal`` (tolerance is two sigma) or ``uniform`` (its limits);
+        spread, drift, lead, joined}``; ``joined``: across or in line, in one branch with the element before;
+        ``spread``: ``normal`` (tolerance is two sigma) or ``uniform`` (its limits);
         ``faults``: a list such as ``"L2 +15 %"``, ``"open joint at C1"``, ``"C3 = 39 pF"`` or
         ``"solder bridge across L2"``;
         ``exact``: no tolerance is drawn.
@@ -102,6 +109,9 @@ def ladder(spec: Mapping[str, Any], draws: Draws) -> Part:
     """
     known_keys(spec, "elements", "exact")
     elements = [_element(e, None if spec.get("exact") else draws) for e in spec["elements"]]
+    for k, element in enumerate(elements):
+        if element.joined and (k == 0 or elements[k - 1].place != element.place):
+            raise ValueError(f"element {element.name} is joined to none: none of its place stands before it")
     faults = [str(f) for f in spec.get("faults", ())]
     for fault in faults:
         elements = _with_fault(elements, fault)
@@ -112,9 +122,15 @@ def _element(spec: Mapping[str, Any], draws: Draws | None) -> Element:
     what = next((w for w in ("coil", "capacitor", "resistor") if w in spec), None)
     if what is None or spec.get("place") not in ("series", "shunt"):
         raise ValueError(f"element {spec!r} needs `place` and one of coil, capacitor, resistor")
-    known_keys(spec, "name", "place", what, "q", "q at", "resonance", "tolerance", "spread", "drift", "lead")
+    known_keys(
+        spec, "name", "place", what, "q", "q at", "resonance", "tolerance", "spread", "drift", "lead",
+        "joined",
+    )  # fmt: skip
     name, spread = str(spec["name"]), spec.get("spread", "normal")
     off, limit = 0.0, share(spec.get("tolerance", "0 %"))
+    joined = str(spec.get("joined", ""))
+    if joined not in ("", "across", "in line"):
+        raise ValueError(f"element {name}: it is joined across the one before or in line, not {joined!r}")
     if spread not in ("normal", "uniform"):
         raise ValueError(f"a spread is normal or uniform, not {spread!r}")
     if draws:
@@ -125,6 +141,7 @@ def _element(spec: Mapping[str, Any], draws: Draws | None) -> Element:
     return Element(
         name, spec["place"], what, value, number(spec.get("q", np.inf)), number(spec.get("q at", 100e6)),
         number(spec.get("resonance", 0.0)), number(spec.get("drift", 0.0)), number(spec.get("lead", 0.0)),
+        joined=joined,
     )  # fmt: skip
 
 
@@ -152,10 +169,25 @@ def _with_fault(elements: list[Element], fault: str) -> list[Element]:
 def _response(elements: list[Element], f_hz: Real, around: Surroundings) -> Matrix:
     one, zero = np.ones(len(f_hz), np.complex128), np.zeros(len(f_hz), np.complex128)
     a, b, c, d = one, zero, zero, one
-    for element in elements:
-        z = element.impedance(f_hz, around)
-        if element.place == "series":
+    for branch in _branches(elements):
+        z = branch[0].impedance(f_hz, around)
+        for element in branch[1:]:
+            other = element.impedance(f_hz, around)
+            around_it = z + other
+            around_it = np.where(around_it == 0.0, _RESONANT_OHM, around_it)
+            z = z * other / around_it if element.joined == "across" else around_it
+        if branch[0].place == "series":
             b, d = a * z + b, c * z + d
         else:
             a, c = a + b / z, c + d / z
     return from_abcd(a, b, c, d)
+
+
+def _branches(elements: list[Element]) -> list[list[Element]]:
+    branches: list[list[Element]] = []
+    for element in elements:
+        if element.joined:
+            branches[-1].append(element)
+        else:
+            branches.append([element])
+    return branches

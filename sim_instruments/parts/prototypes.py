@@ -58,11 +58,11 @@ def scaled(
     g
         Prototype with its load as last value.
     passes
-        ``"low"``, ``"high"`` or ``"band"``.
+        ``"low"``, ``"high"``, ``"band"`` or ``"all but a band"``.
     edge_hz
-        Edge; of a band-pass the geometric centre.
+        Edge; of a band the geometric centre.
     width_hz
-        Of a band-pass.
+        Of a band.
     first
         Where ``g1`` stands: ``"shunt"`` or ``"series"``.
     z0
@@ -72,7 +72,8 @@ def scaled(
     -------
     list of dict
         ``{name, place, coil | capacitor}`` in SI units, as :func:`sim_instruments.parts.ladder.ladder`
-        takes them; names count the branches: ``L1``, ``C1``, ...
+        takes them; names count the branches: ``L1``, ``C1``, ... Of a band-stop, the two of a branch are
+        joined: side by side in a series branch, in line in a shunt one.
 
     Raises
     ------
@@ -96,10 +97,18 @@ def scaled(
                 pair = {"coil": coil / share, "capacitor": share / (w * value * z0)}
             else:
                 pair = {"coil": share * z0 / (w * value), "capacitor": capacitor / share}
+        elif passes == "all but a band":
+            share = width_hz / edge_hz
+            if place == "series":
+                pair = {"coil": coil * share, "capacitor": 1 / (share * w * value * z0)}
+            else:
+                pair = {"coil": z0 / (w * value * share), "capacitor": capacitor * share}
         else:
-            raise ValueError(f"a filter passes low, high or band, not {passes!r}")
+            raise ValueError(f"a filter passes low, high, band or all but a band, not {passes!r}")
         elements += [
             {"name": f"{'L' if what == 'coil' else 'C'}{k}", "place": place, what: float(size)}
             for what, size in pair.items()
         ]
+        if passes == "all but a band":
+            elements[-1]["joined"] = "across" if place == "series" else "in line"
     return elements

@@ -96,6 +96,42 @@ def test_a_band_pass_is_the_low_pass_stretched() -> None:
     np.testing.assert_allclose(_loss_db(band, f), 10 * np.log10(1 + w**6), rtol=1e-6, atol=1e-6)
 
 
+@pytest.mark.parametrize("first", ["shunt", "series"])
+def test_a_band_stop_is_the_low_pass_turned_inside_out(first: str) -> None:
+    """The low-pass loss at ``width f0 / (f0^2/f - f)`` (Pozar 8.4, from memory)."""
+    stop = build(
+        {"kind": "filter", "shape": "butterworth", "order": 3, "passes": "all but a band", "center": 169e6,
+         "width": 20e6, "first": first}, Draws(1))  # fmt: skip
+    f = np.array([60e6, 140e6, 160e6, 168e6, 171e6, 180e6, 220e6, 500e6])
+    w = 20e6 / (169e6**2 / f - f)
+    np.testing.assert_allclose(_loss_db(stop, f), 10 * np.log10(1 + w**6), rtol=1e-6, atol=1e-6)
+    assert _loss_db(stop, 169e6)[0] > 150  # lossless elements: hardly anything comes through
+
+
+def test_a_band_stop_is_as_deep_as_its_coils_are_good() -> None:
+    """With Q the notch fills; a broken joint takes its whole branch away."""
+    spec = {"kind": "filter", "shape": "chebyshev", "order": 3, "ripple": 0.1, "passes": "all but a band",
+            "center": 169e6, "width": 20e6, "coil q": 100, "q at": 169e6}  # fmt: skip
+    good, broken = build(spec, Draws(1)), build({**spec, "faults": ["open joint at C1"]}, Draws(1))
+    assert 40 < _loss_db(good, 169e6)[0] < 80
+    assert _loss_db(broken, 169e6)[0] < _loss_db(good, 169e6)[0] - 10
+
+
+@pytest.mark.parametrize(
+    ("elements", "says"),
+    [
+        ([{"name": "L1", "place": "shunt", "coil": "10 nH", "joined": "across"}], "joined to none"),
+        ([{"name": "C1", "place": "shunt", "capacitor": "1 pF"},
+          {"name": "L1", "place": "series", "coil": "10 nH", "joined": "across"}], "joined to none"),
+        ([{"name": "L1", "place": "shunt", "coil": "10 nH", "joined": "beside"}], "not 'beside'"),
+    ],
+)  # fmt: skip
+def test_joins_that_make_no_sense_are_refused(elements: list[dict[str, str]], says: str) -> None:
+    """An element joins one of its own place, across it or in line."""
+    with pytest.raises(ValueError, match=says):
+        build({"kind": "ladder", "elements": elements}, Draws(1))
+
+
 def test_an_even_chebyshev_wants_its_own_load() -> None:
     """Between 50 ohm and 50 g(n+1) ohm an order of four ripples by 0.1 dB and no more."""
     f = np.linspace(1e6, EDGE, 401)
