@@ -11,6 +11,7 @@ from benchrun.sequence.files import load_model
 from benchrun.sequence.kit import KitFile
 from benchrun.sequence.mask import MaskFile
 from benchrun.sequence.models import Sequence
+from benchrun.uncertainty.montecarlo import Effort
 
 __all__ = ["build"]
 
@@ -48,4 +49,6 @@ def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure
         bench.uncertainty.level_terms,
         bench.scalar_ports,
         bench.uncertainty.noise_at,
+        bench.uncertainty.source_terms,
+        Effort(bench.uncertainty.trials.number, bench.uncertainty.trials.digits),
     )

@@ -12,7 +12,9 @@ from benchrun.rf.touchstone import TouchstoneData
 from benchrun.sequence.bench import NoiseAt
 from benchrun.sequence.models import Sequence, SweepSetup
 from benchrun.uncertainty.level import LevelTerms
+from benchrun.uncertainty.montecarlo import ADAPTIVE, Effort
 from benchrun.uncertainty.residual import ResidualTerms
+from benchrun.uncertainty.sources import UNDECLARED, Sources
 
 __all__ = ["NOISE_SEED", "Procedure"]
 
@@ -40,6 +42,10 @@ class Procedure:
         Ports of the generator and of the spectrum analyzer.
     noise_seed
         Seed of the noise draws; stands in the record.
+    sources
+        Declared sources of uncertainty; where there are any, they are propagated in place of residual terms.
+    effort
+        How many trials that takes.
     """
 
     sequence: Sequence
@@ -51,6 +57,8 @@ class Procedure:
     level: LevelTerms = LevelTerms()
     scalar_ports: tuple[int, int] = (3, 4)
     noise_at: NoiseAt | None = None
+    sources: Sources = UNDECLARED
+    effort: Effort = ADAPTIVE
 
     def residual_of(self, setup: SweepSetup) -> ResidualTerms:
         """The residual terms under a sweep's bandwidth, level and averaging."""

@@ -11,6 +11,8 @@ from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.judgement import JudgedFigure
 from benchrun.evaluate.network import Data, Network
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.propagation.propagate import Propagated
+from benchrun.evaluate.propagation.trail import Basis, Trail
 from benchrun.rf.calibration.method import Examiner, Terms
 from benchrun.rf.twoport import FloatArray, TwoPort
 from benchrun.uncertainty.decision import Conclusion, worst
@@ -40,6 +42,8 @@ class Calibration:
         declared.
     z0_ohm
         Reference impedance, from the kit.
+    basis
+        How it was made, for a propagation to make it again; None where no sources are declared.
     """
 
     f_hz: FloatArray
@@ -48,6 +52,7 @@ class Calibration:
     examiner: Examiner
     noise: Data | None
     z0_ohm: float
+    basis: Basis | None = None
 
 
 @dataclass(slots=True, eq=False)
@@ -61,6 +66,13 @@ class State:
     thorough
         Have scikit-rf repeat every step, also those that it does slowly; an audit does so always, a run
         with the first unit after each calibration.
+    provisional
+        Judge by first-order propagation only, at once; the trials follow when the step is applied again
+        without. Means nothing where no sources are declared.
+    trails
+        By step: how its network came about, where sources are declared.
+    propagated
+        By judge step: what became of the sources.
     halves
         Fixture halves on the grid of the step that takes them out, ``"step file"``; filled in once.
     """
@@ -73,6 +85,9 @@ class State:
     judged: dict[str, tuple[JudgedFigure, ...]] = field(default_factory=dict)
     agreements: dict[str, float] = field(default_factory=dict)
     halves: dict[str, TwoPort] = field(default_factory=dict)
+    provisional: bool = False
+    trails: dict[str, Trail] = field(default_factory=dict)
+    propagated: dict[str, Propagated] = field(default_factory=dict)
 
     @property
     def figures(self) -> tuple[JudgedFigure, ...]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from typing import Annotated, Literal, TypeAlias
+from typing import Annotated, Any, Literal, TypeAlias
 
 from pydantic import BeforeValidator, Field, model_validator
 
@@ -20,6 +20,7 @@ from benchrun.sequence.fields import (
 from benchrun.sequence.models import Withstands
 from benchrun.uncertainty.level import LEVEL_TERMS, LevelTerms
 from benchrun.uncertainty.residual import DECIBEL_LOSS, DECIBEL_RIPPLE, ResidualTerms
+from benchrun.uncertainty.sources import GROUPS, Sources
 
 __all__ = ["Bench", "Instrument", "Port", "Range", "Role", "Uncertainty"]
 
@@ -80,6 +81,41 @@ def _level(value: object) -> object:
 _KNOWN = DECIBEL_LOSS + DECIBEL_RIPPLE
 
 
+def _sources(value: object) -> object:
+    if isinstance(value, dict):
+        for group, entries in value.items():
+            if not isinstance(entries, dict):
+                raise ValueError(f"{group}: {entries!r} is no list of sizes; it takes {_sizes(group)}")
+        Sources.from_mapping(
+            {str(g): {str(k): str(v) for k, v in entries.items()} for g, entries in value.items()}
+        )  # refuses what it cannot read
+    return value
+
+
+def _sizes(group: object) -> str:
+    return ", ".join(GROUPS.get(str(group), GROUPS))
+
+
+_SOURCE_SCHEMA: dict[str, Any] = {
+    "type": "object",
+    "properties": {
+        group: {"type": "object", "propertyNames": {"enum": [*keys, "distribution"]}}
+        for group, keys in GROUPS.items()
+    },
+    "additionalProperties": False,
+    "examples": [{"connector": {"repeatability": "68 dB"}}],
+}
+
+
+class Trials(FileModel):
+    """How many trials a propagation runs."""
+
+    number: int = Field(
+        default=0, ge=0, le=1_000_000, description="always so many; 0: as many as the digits need"
+    )
+    digits: Literal[1, 2] = Field(default=1, description="of a standard uncertainty that must be stable")
+
+
 class NoiseAt(FileModel):
     """Conditions of the declared noise; a sweep under others has another noise.
 
@@ -104,6 +140,13 @@ class Uncertainty(FileModel):
         json_schema_extra={"propertyNames": {"enum": list(_KNOWN)}, "examples": [{"directivity": "44 dB"}]},
     )
 
+    sources: Annotated[dict[str, dict[str, str]], BeforeValidator(_sources)] = Field(
+        default_factory=dict,
+        description="what makes readings differ; propagated through calibration and de-embedding, in place "
+        "of residual terms",
+        json_schema_extra=_SOURCE_SCHEMA,
+    )
+    trials: Trials = Trials()
     noise_at: NoiseAt | None = Field(
         default=None, alias="noise at", description="conditions under which noise floor and trace noise hold"
     )
@@ -117,6 +160,11 @@ class Uncertainty(FileModel):
     def level_terms(self) -> LevelTerms:
         """The level terms as numbers."""
         return LevelTerms.from_mapping(self.level)
+
+    @property
+    def source_terms(self) -> Sources:
+        """The sources as numbers."""
+        return Sources.from_mapping(self.sources)
 
     @property
     def terms(self) -> ResidualTerms:

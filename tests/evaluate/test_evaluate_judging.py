@@ -96,7 +96,9 @@ F = np.linspace(100e6, 200e6, 11)
 def judge(network, masks=None, **limit):
     """All judged figures of one limit."""
     step = Judge.model_validate({"from": "x", "rule": limit.pop("rule", "simple"), "limits": [limit]})
-    state = SimpleNamespace(networks={"x": network}, procedure=SimpleNamespace(masks=masks or {}), judged={})
+    state = SimpleNamespace(
+        networks={"x": network}, procedure=SimpleNamespace(masks=masks or {}), judged={}, trails={}
+    )
     JudgeArithmetic().apply(step, state, {})
     return state.judged["judgement"]
 

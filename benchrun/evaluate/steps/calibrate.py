@@ -9,6 +9,7 @@ import numpy as np
 
 from benchrun.evaluate.network import Data
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.propagation.trail import Basis
 from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import Calibration, State, agree
 from benchrun.hookup import Hookup
@@ -52,9 +53,14 @@ class CalibrateArithmetic:
         # Declared residual terms are those of a full correction: they say nothing of a normalization, nor
         # of a method whose idle ports nobody read.
         full = method.name != "response" and (not method.without_switch_terms or SWITCH_READING in swept)
-        declared = procedure.residual.declared and full
+        declared = procedure.residual.declared and full and not procedure.sources.declared
         noise = _noise(len(ports), len(f_hz), procedure.noise_seed) if declared else None
-        state.calibrations[step.name] = Calibration(f_hz, ports, terms, examiner, noise, kit.z0_ohm)
+        basis = None
+        if procedure.sources.declared and not step.turns:
+            setup, hookups = procedure.sequence.sweeps[step.sweep], self.hookups(step, procedure)
+            made = procedure.sources.noise(setup.bandwidth, setup.power, setup.averages)
+            basis = Basis(method, ports, kit, hookups, swept, made, step.isolation, options)
+        state.calibrations[step.name] = Calibration(f_hz, ports, terms, examiner, noise, kit.z0_ohm, basis)
 
 
 @functools.cache

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
-from typing import Any
+from typing import Any, TypeAlias
 
 import numpy as np
 
@@ -12,6 +12,10 @@ from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.judgement import JudgedFigure, not_told, told
 from benchrun.evaluate.network import Data, Network, combine
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.propagation.judged import bounds, stepped
+from benchrun.evaluate.propagation.judged import judged as judged_spreads
+from benchrun.evaluate.propagation.propagate import FigureSpread
+from benchrun.evaluate.propagation.trail import Trail
 from benchrun.evaluate.readings import Raw
 from benchrun.evaluate.state import State
 from benchrun.hookup import Hookup
@@ -25,6 +29,9 @@ from benchrun.uncertainty.decision import COVERAGE_FACTOR, Rule
 
 __all__ = ["JudgeArithmetic"]
 
+Spreads: TypeAlias = Mapping[tuple[int, str], FigureSpread]
+"""By position of the limit in its step, and side."""
+
 
 class JudgeArithmetic:
     """Judge every limit of a step."""
@@ -36,7 +43,10 @@ class JudgeArithmetic:
     def apply(self, step: Judge, state: State, readings: Mapping[str, Raw]) -> None:
         """Leave judged figures."""
         network, judged = state.networks[step.from_], list[JudgedFigure]()
-        for limit in step.limits:
+        spreads: Spreads = {}
+        if (trail := state.trails.get(step.from_)) is not None:
+            network, spreads = _propagated(step, state, trail, network)
+        for position, limit in enumerate(step.limits):
             rule = limit.rule or step.rule
             if isinstance(limit, MaskLimit):
                 lines = state.procedure.masks[limit.mask].lines
@@ -44,11 +54,31 @@ class JudgeArithmetic:
                     name = f"{limit.text}, line {number}" if len(lines) > 1 else limit.text
                     judged.append(_judge_line(name, line, network, limit, rule))
             else:
-                judged.extend(_judge_figure(limit, network, rule))
+                own = {side: spread for (at_limit, side), spread in spreads.items() if at_limit == position}
+                judged.extend(_judge_figure(limit, network, rule, own))
         state.judged[step.name] = tuple(judged)
 
 
-def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[JudgedFigure]:
+def _propagated(step: Judge, state: State, trail: Trail, network: Network) -> tuple[Network, Spreads]:
+    """What the declared sources come to: first-order variations at once, then the trials."""
+    procedure, seed = state.procedure, state.procedure.noise_seed
+    network = stepped(trail, procedure.sources, network, seed)
+    limits = [
+        (position, limit, _in_impedance(limit, network))
+        for position, limit in enumerate(step.limits)
+        if isinstance(limit, FigureLimit)
+    ]
+    if state.provisional or not limits:
+        return network, {}
+    state.propagated[step.name], spreads = judged_spreads(
+        trail, procedure.sources, network, limits, procedure.effort, seed
+    )
+    return network, spreads
+
+
+def _judge_figure(
+    limit: FigureLimit, network: Network, rule: Rule, spreads: Mapping[str, FigureSpread]
+) -> Iterator[JudgedFigure]:
     kind, unit = limit.kind, limit.kind.dimension.unit or "1"
     parameters = _in_impedance(limit, network)
     for side, bound in limit.bounds.items():
@@ -61,7 +91,9 @@ def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[
             continue
         value = float(found.value)
         up = down = None
-        if network.varied is not None:
+        if side in spreads:
+            up, down = bounds(spreads[side], kind.sense)
+        elif network.varied is not None:
             near = _near(network.f_hz, limit)
             varied = _sliced(network.varied, near)
             moved = kind.measure(network.f_hz[near], varied, side, **parameters).value
@@ -78,7 +110,7 @@ def _judge_figure(limit: FigureLimit, network: Network, rule: Rule) -> Iterator[
 def _in_impedance(limit: FigureText, network: Network) -> dict[str, Any]:
     """A figure's parameters; the reference impedance is the result's own, unless the limit names another."""
     if "reference" in limit.kind.parameters and limit.reference is None:
-        return {**limit.parameters, "reference": network.z0_ohm}
+        return {**limit.parameters, "reference": network.impedance(limit.parameters.get("port", 1)).real}
     return limit.parameters
 
 

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 
 from benchrun.evaluate.network import Data, Network
 from benchrun.evaluate.procedure import Procedure
+from benchrun.evaluate.propagation.trail import Trail
 from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import State, agree
 from benchrun.hookup import Hookup
@@ -63,3 +64,8 @@ class SweepArithmetic:
             systematic = residual.steps if isinstance(nominal, TwoPort) else residual.one_port_steps
         state.networks[step.name] = Network(calibration.f_hz, nominal, varied, systematic, calibration.z0_ohm)
         state.kinds[step.name] = "corrected"
+        if (basis := calibration.basis) is not None:
+            state.trails[step.name] = Trail(
+                calibration.f_hz, basis, calibration.terms, raw, needed[0], basis.noise,
+                definitions=basis.definitions(calibration.f_hz),
+            )  # fmt: skip
