@@ -146,8 +146,8 @@ def resolve(loaded: Loaded[Sequence], today: datetime.date) -> Named:
                 if isinstance(limit, MaskLimit):
                     load("mask", limit.mask, (*path, "limits", i, "mask"), MaskFile, masks)
         elif isinstance(step, DeEmbed):
-            for key, name in (("left", step.left), ("right", step.right)):
-                if name and name not in fixtures and (file := seek("fixture", name, (*path, key))):
+            for key, name in step.files().items():
+                if name not in fixtures and (file := seek("fixture", name, (*path, *key))):
                     try:
                         raw = read_bytes(file, FIXTURE_BYTES)
                         fixtures[name] = raw, read_touchstone(raw, str(file))

@@ -34,6 +34,8 @@ class Network:
         How many rows of ``varied`` are one-standard-uncertainty steps; the rest are draws of noise.
     z0_ohm
         Real reference impedance of both ports.
+    ports_ohm
+        Reference impedance of each port where they differ or are complex; ``z0_ohm`` then means nothing.
     """
 
     f_hz: FloatArray
@@ -41,6 +43,11 @@ class Network:
     varied: Data | None = None
     systematic: int = 0
     z0_ohm: float = 50.0
+    ports_ohm: tuple[complex, complex] | None = None
+
+    def impedance(self, port: int) -> complex:
+        """Reference impedance of a port in ohms."""
+        return complex(self.z0_ohm) if self.ports_ohm is None else self.ports_ohm[port - 1]
 
     @property
     def ports(self) -> int:

@@ -25,6 +25,12 @@ def result_files(state: State) -> dict[tuple[str, str], tuple[str, bytes]]:
         path = f"{kind}/{step}.s{network.ports}p"
         nominal = network.nominal
         assert not isinstance(nominal, Tone)  # its kind is "tone"
-        contents = write(network.f_hz, nominal, f"{step}: {kind}", network.z0_ohm)
+        comment = f"{step}: {kind}"
+        if network.ports_ohm is not None:  # which the option line has no way to say
+            one, two = (f"{z.real!r} {z.imag:+}j ohm" for z in network.ports_ohm)
+            comment += (
+                f"\nreference impedance of port 1: {one}; of port 2: {two}; not that of the option line"
+            )
+        contents = write(network.f_hz, nominal, comment, network.z0_ohm)
         found[step, kind] = path, contents
     return found

@@ -8,7 +8,7 @@ from benchrun.sequence.files import Loaded
 from benchrun.sequence.models import Sequence
 from benchrun.sequence.steps import StepModel, Sweep
 
-__all__ = ["grid_of", "outside", "source_of", "span", "step_paths"]
+__all__ = ["grid_of", "ohm_of", "outside", "source_of", "span", "step_paths"]
 
 
 def step_paths(loaded: Loaded[Sequence]) -> list[tuple[StepModel, tuple[object, ...]]]:
@@ -34,6 +34,18 @@ def grid_of(sequence: Sequence, name: str) -> FloatArray | None:
         return sequence.sweep_of(step).grid() if isinstance(step, Sweep) else None
     except KeyError:
         return None  # a name that does not resolve is reported elsewhere
+
+
+def ohm_of(sequence: Sequence, name: str, z0_ohm: float) -> tuple[complex, complex]:
+    """Find the reference impedance of each port of a network, ``z0_ohm`` being that of the calibration."""
+    wanted: str | None = name
+    for step in reversed(sequence.steps):
+        if step.name == wanted and step.leaves == "network":
+            changed = getattr(step, "renormalise", None)
+            if changed is not None:
+                return changed[0], changed[1]
+            wanted = getattr(step, "from_", None)
+    return complex(z0_ohm), complex(z0_ohm)
 
 
 def outside(low: float, high: float, grid: FloatArray) -> bool:

@@ -10,7 +10,7 @@ import pytest
 from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.chain import apply, evaluate
 from benchrun.evaluate.state import AGREEMENT
-from benchrun.evaluate.steps.deembed import _on_grid
+from benchrun.evaluate.steps.removing import on_grid
 from benchrun.rf.touchstone import read
 from benchrun.rf.twoport import TwoPort
 from sim_instruments.bench import load_bench
@@ -88,11 +88,11 @@ def test_halves_are_filled_in_between_their_points(workplace):
 
 def test_a_half_on_the_grid_itself_is_taken_as_it_is(workplace):
     fixture = workplace().job.plan.procedure.fixtures["jig-left.s2p"]
-    same = _on_grid(fixture, fixture.f_hz)
+    same = on_grid(fixture, fixture.f_hz)
     for ours, theirs in zip(same.planes, fixture.two_port.planes, strict=True):
         np.testing.assert_array_equal(ours, theirs)
     with pytest.raises(InvalidMeasurement, match="does not reach over the sweep"):
-        _on_grid(fixture, np.array([1e6, 2e9]))
+        on_grid(fixture, np.array([1e6, 2e9]))
 
 
 @pytest.mark.parametrize(

@@ -55,7 +55,7 @@ SLIPS = {
     "sweep with both forms": ("points: 801", "points: 801, at: [1 MHz, 2 MHz]", "[1 MHz", "keep one of them", ""),
     "sweep list not rising": ("from: 5 MHz, to: 1.2 GHz, points: 801", "at: [2 MHz, 2 MHz]", "[2 MHz", "do not increase", ""),
     "sweep of both": ("with: plane", "with: plane, sweep: wide", "{as: raw", "say one", ""),
-    "fixture of none": (", left: left.s2p", "", "{as: filter", "neither `left` nor `right`", ""),
+    "fixture of none": (", left: left.s2p", "", "{as: filter", "says nothing to take out", ""),
     "missing key": ("  part: low-pass filter\n", "", "serial", "lacks the key 'part'", "Add it."),
     "missing key in a step": (", kit: n50", "", "{as: plane", "lacks the key 'kit'", "Add it."),
     "edition": ("edition: 1", "edition: 2", "2", "edition: 2 is not allowed here", ""),

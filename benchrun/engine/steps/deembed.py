@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from benchrun.engine.events import Noted
 from benchrun.engine.steps.base import AtWork, carry_out
+from benchrun.evaluate.steps.removing import quality_text
 from benchrun.sequence.steps import DeEmbed
 
 __all__ = ["DeEmbedExecution"]
@@ -12,10 +14,12 @@ class DeEmbedExecution:
     """Take the fixture out."""
 
     def words(self, step: DeEmbed, work: AtWork) -> str:
-        """Which halves."""
-        halves = [name for name in (step.left, step.right) if name]
-        return f"{' and '.join(halves)} out of {step.from_}"
+        """What is taken out."""
+        return step.text
 
     def carry_out(self, step: DeEmbed, work: AtWork) -> None:
-        """Arithmetic."""
+        """Arithmetic; how good a 2x-thru is, is told."""
+        if step.two_thru is not None:
+            data = work.procedure.fixtures[step.two_thru.file]
+            work.emit(Noted(text=quality_text(data.two_port)))
         carry_out(step, work)
