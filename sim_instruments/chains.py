@@ -47,7 +47,7 @@ def between(
     f_hz: Real,
     rows: Sequence[tuple[tuple[int, ...], Sequence[Part], Sequence[Matrix]]],
     around: Surroundings,
-    power_dbm: float | None = None,
+    power_dbm: float | Real | None = None,
     driven: int = 1,
 ) -> Matrix:
     """S-parameters between ports 1 and 2, ``(f, 2, 2)``.
@@ -83,7 +83,7 @@ def between(
 
 
 def _driven(
-    f_hz: Real, part: Part, around: Surroundings, power_dbm: float | None, row: list[Matrix]
+    f_hz: Real, part: Part, around: Surroundings, power_dbm: float | Real | None, row: list[Matrix]
 ) -> Matrix:
     """A part under the wave that reaches it; what it sends back is small and not followed again."""
     if power_dbm is None or part.gain_factor is None:

@@ -11,9 +11,13 @@ from rich.table import Table
 from rich.text import Text
 
 from sim_instruments.bench import SimulatedBench
+from sim_instruments.scpi.instrument import Instrument
 from sim_instruments.world import Link
 
 __all__ = ["draw", "drawing", "owners"]
+
+_COLD = 1 << 4
+"""Bit of QUEStionable (temperature)."""
 
 
 def drawing(bench: SimulatedBench) -> RenderableType:
@@ -34,7 +38,8 @@ def drawing(bench: SimulatedBench) -> RenderableType:
         lying.append(f"unit {serial}")
     about = Table.grid(padding=(0, 2))
     for resource, instrument in bench.instruments.items():
-        about.add_row("instrument", escape(f"{resource}  {' '.join(instrument.identity[:3])}"))
+        what = f"{resource}  {' '.join(instrument.identity[:3])}"
+        about.add_row("instrument", escape(what + (", warming up" if is_cold(instrument) else "")))
     for port, whose in owners(bench).items():
         about.add_row(f"port {port}", escape(whose))
     about.add_row("on the table", escape(", ".join(lying) or "nothing"))
@@ -50,6 +55,12 @@ def owners(bench: SimulatedBench) -> dict[int, str]:
         port: " and ".join(outlets[port].owners if port in outlets else []) or "network analyzer"
         for port in bench.world.ports
     }
+
+
+def is_cold(instrument: Instrument) -> bool:
+    """Whether it says that it is still warming up."""
+    instrument.status_byte(False)  # brings its conditions up to the bench's time
+    return bool(instrument.status.questionable.condition & _COLD)
 
 
 def _row(link: Link, serial: str, switched: bool) -> RenderableType:

@@ -254,7 +254,7 @@ class World:
         """Whether something is connected that heeds the level."""
         return any(self.part(item).gain_factor is not None for link in self.links for item in link.items)
 
-    def between_ports(self, f_hz: Real, power_dbm: float | None = None, driven: int = 1) -> Matrix:
+    def between_ports(self, f_hz: Real, power_dbm: float | Real | None = None, driven: int = 1) -> Matrix:
         """True S-parameters between the reference planes of ports 1 and 2, joints included, ``(f, 2, 2)``.
 
         Parameters
@@ -262,7 +262,7 @@ class World:
         f_hz
             ``(f,)``.
         power_dbm
-            Level of the wave that meets the connection; none given: too low to matter.
+            Level of the wave that meets the connection, one or ``(f,)``; none given: too low to matter.
         driven
             The port it comes from.
         """

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from typing import Any
 
@@ -10,7 +11,10 @@ import numpy as np
 from sim_instruments.draws import Draws
 from sim_instruments.values import number
 
-__all__ = ["Ageing"]
+__all__ = ["COLD_DB", "Ageing"]
+
+COLD_DB = 0.01
+"""Off by more than this an instrument says that it is warming up: bit 4 (temperature) of QUEStionable."""
 
 _PERIODS_S = (2100.0, 5300.0, 14000.0)
 
@@ -40,9 +44,13 @@ class Ageing:
         self._start = {p: [draws.uniform(f"start {p} {t}", 0.0, 6.283) for t in _PERIODS_S] for p in (1, 2)}
         self._way = {p: draws.phase(f"way {p}") for p in (1, 2)}
 
+    def cold_db(self, time_s: float) -> float:
+        """How far readings are off because it is not warm yet."""
+        return self._cold * math.exp(-(time_s + self._on_s) / self._tau_s) * 8.686
+
     def factor(self, port: int, time_s: float, temperature_c: float) -> complex:
         """Factor on what the receivers of a port read."""
-        cold = self._cold * np.exp(-(time_s + self._on_s) / self._tau_s)
+        cold = self.cold_db(time_s) / 8.686
         waves = sum(
             np.sin(2 * np.pi * time_s / t + s) for t, s in zip(_PERIODS_S, self._start[port], strict=True)
         )

@@ -22,17 +22,30 @@ _SETTLE_S = 100e-6
 _OVERLOAD_DBM = 12.0
 _INSTANT_S = 1e-9
 """Times nearer than this are the same."""
-_SWEEPING, _WAITING, _OVERLOADED = 3, 5, 3
-"""Bits of the OPERation register, and of QUEStionable (power)."""
+_SWEEPING, _WAITING, _OVERLOADED, _COLD = 3, 5, 3, 4
+"""Bits of the OPERation register, and of QUEStionable (power, temperature)."""
 
 
 class Readings(Protocol):
     """Where an analyzer's readings come from."""
 
     def read(
-        self, f_hz: Real, bandwidth_hz: float, power_dbm: float, averages: int, source_on: bool
+        self, f_hz: Real, bandwidth_hz: float, power_dbm: float | Real, averages: int, source_on: bool
     ) -> Matrix:
         """Raw readings ``(f, 2, 2)`` of what is connected now.
+
+        Parameters
+        ----------
+        f_hz
+            ``(f,)``.
+        bandwidth_hz
+            Of the IF filter.
+        power_dbm
+            Of the source, one or ``(f,)``.
+        averages
+            Sweeps averaged.
+        source_on
+            Whether it sends.
 
         Raises
         ------
@@ -49,6 +62,10 @@ class Readings(Protocol):
         ScpiError
             -241 where nothing reads it.
         """
+        ...
+
+    def is_cold(self) -> bool:
+        """Whether readings still move because it was switched on not long ago."""
         ...
 
 
@@ -95,6 +112,8 @@ class Analyzer(Instrument):
         self.mode, self.listed = "SWEep", list[float]()
         self.bandwidth = self.manners.bandwidth(min(1e3, self.limits.bandwidth[1]))
         self.power = min(max(-10.0, self.limits.power[0]), self.limits.power[1])
+        self.power_mode, (self.power_start, self.power_stop) = "FIXed", self.limits.power
+        self.fixed = (self.start + self.stop) / 2
         self.averages, self.averaging = 1, False
         self.output, self.continuous = False, False
         self.form, self.digits, self.border = "ASCii", 0, "NORMal"
@@ -106,15 +125,24 @@ class Analyzer(Instrument):
 
     def grid(self) -> Real:
         """Frequencies of the next sweep, ``(f,)``."""
+        if self.power_mode == "SWEep":
+            return np.full(self.points, self.fixed)
         if self.mode == "LIST":
             return np.array(self.listed)
         space = np.geomspace if self.spacing == "LOGarithmic" else np.linspace
         return np.asarray(space(self.start, self.stop, self.points), np.float64)
 
+    def levels(self) -> Real:
+        """Levels of the next sweep, ``(f,)`` in dBm."""
+        if self.power_mode == "SWEep":
+            return np.linspace(self.power_start, self.power_stop, self.points)
+        return np.full(len(self.grid()), self.power)
+
     @property
     def sweep_s(self) -> float:
         """Both directions; a point takes the filter's settling, about 1.3 / bandwidth, and the source's."""
-        count = len(self.listed) if self.mode == "LIST" else self.points
+        listed = self.mode == "LIST" and self.power_mode == "FIXed"
+        count = len(self.listed) if listed else self.points
         times = self.averages if self.averaging else 1
         return 2.0 * count * times * (1.3 / self.bandwidth + _SETTLE_S)
 
@@ -174,9 +202,12 @@ class Analyzer(Instrument):
                 self._arm()
 
     def _arm(self) -> None:
-        if self.mode == "LIST" and not self.listed:
+        if self.power_mode == "SWEep":
+            if self.power_stop <= self.power_start:
+                raise ScpiError(-221, "the stop power is not above the start power")
+        elif self.mode == "LIST" and not self.listed:
             raise ScpiError(-221, "no list of frequencies")
-        if self.mode == "SWEep" and self.stop <= self.start:
+        elif self.mode == "SWEep" and self.stop <= self.start:
             raise ScpiError(-221, "STOP is not above STARt")
         self._result, self._renewed = None, False
         if self.trigger == "IMMediate":
@@ -208,7 +239,8 @@ class Analyzer(Instrument):
             self.refresh()
 
     def refresh(self) -> None:
-        """End the sweep if its time is up."""
+        """End the sweep if its time is up; say whether it is still warming up."""
+        self.status.questionable.put(_COLD, self.readings.is_cold())
         if self._due is not None and self.world.time_s >= self._due - _INSTANT_S:
             if not self.continuous:
                 self._idle()
@@ -233,14 +265,15 @@ class Analyzer(Instrument):
         f_hz, averages = self.grid(), self.averages if self.averaging else 1
         self._renewed = False
         try:
-            m = self.readings.read(f_hz, self.bandwidth, self.power, averages, self.output)
+            power = self.levels() if self.power_mode == "SWEep" else self.power
+            m = self.readings.read(f_hz, self.bandwidth, power, averages, self.output)
         except ScpiError as error:
             self._result = None
             self.status.report(error)
             return
-        into = self.power + 20 * np.log10(np.max(np.abs(m)) + 1e-30)
+        into = np.max(power + 20 * np.log10(np.max(np.abs(m), axis=(1, 2)) + 1e-30))
         self.status.questionable.put(_OVERLOADED, bool(self.output and into > _OVERLOAD_DBM))
-        self._result = f_hz, m
+        self._result = f_hz if self.power_mode == "FIXed" else self.levels(), m
 
     def switch_terms(self) -> Matrix:
         """Waves of the idle port, ``a2/b2`` and ``a1/b1``, as read in the last sweep, ``(f, 2)``.
@@ -251,10 +284,10 @@ class Analyzer(Instrument):
             -230 if there is no sweep, -241 where nothing reads them.
         """
         grid, _ = self.measured()
-        return self.readings.switch_terms(grid)
+        return self.readings.switch_terms(grid if self.power_mode == "FIXed" else self.grid())
 
     def measured(self) -> tuple[Real, Matrix]:
-        """Grid and raw readings ``(f, 2, 2)`` of the last sweep.
+        """Grid, in Hz or of a power sweep in dBm, and raw readings ``(f, 2, 2)`` of the last sweep.
 
         Raises
         ------

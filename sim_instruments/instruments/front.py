@@ -135,6 +135,7 @@ class _Front:
             self._set_centre, lambda: (a.start + a.stop) / 2, low, high, FREQUENCY, centre))  # fmt: skip
         add("[SENSe]:FREQuency:SPAN", self._number(
             self._set_span, lambda: a.stop - a.start, 0.0, span, FREQUENCY, span))  # fmt: skip
+        add("[SENSe]:FREQuency[:CW]", self._setting("fixed", low, high, FREQUENCY))
         add("[SENSe]:FREQuency:SPAN:FULL", Command(lambda _: self._set_full()))
         add("[SENSe]:FREQuency:MODE", self._word("mode", "SWEep", "LIST"))
         add("[SENSe]:SWEep:POINts", self._count("points", 2, a.limits.points))
@@ -163,6 +164,9 @@ class _Front:
     def add_source_and_format(self) -> None:
         a, add = self.analyzer, self.add
         add("SOURce:POWer[:LEVel][:IMMediate][:AMPLitude]", self._setting("power", *a.limits.power, POWER))
+        add("SOURce:POWer:MODE", self._word("power_mode", "FIXed", "SWEep"))
+        add("SOURce:POWer:STARt", self._setting("power_start", *a.limits.power, POWER))
+        add("SOURce:POWer:STOP", self._setting("power_stop", *a.limits.power, POWER))
         add("OUTPut[:STATe]", self._switch("output", lambda on: setattr(a, "output", on)))
         add("FORMat[:DATA]", Command(self._set_format, lambda _: self._format(), 1, 2))
         add("FORMat:BORDer", self._word("border", "NORMal", "SWAPped", sweeps=False))

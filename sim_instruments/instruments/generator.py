@@ -42,7 +42,8 @@ class Generator(Instrument):
     spec
         ``ports``: its one outlet; two generators on the same one are joined by a combiner of
         ``combiner`` (dB) each. ``limits``: ``frequency``, ``power``. ``match`` (return loss, dB);
-        ``harmonics``: dBc of the second, third and so on; ``level error`` and ``flatness`` (dB, one standard
+        ``harmonics``: dBc of the second, third and so on; ``spurious``: a list of ``{offset, level}``, Hz
+        from the carrier and dBc; ``level error`` and ``flatness`` (dB, one standard
         deviation); ``drift`` (dB/K); ``resolution`` of the level (dB) and ``step`` of the frequency (Hz);
         ``reference``: relative frequency error (one standard deviation); ``noise`` (dBm in 1 Hz);
         ``settling`` (s). ``manners``: ``beyond limits``: refuse or nearest; ``source node``: optional or
@@ -67,7 +68,7 @@ class Generator(Instrument):
         allowed(
             "a signal generator", spec, "kind", "model", "serial", "ports", "combiner", "limits", "manners",
             "match", "harmonics", "level error", "flatness", "drift", "resolution", "step", "reference",
-            "noise", "settling",
+            "noise", "settling", "spurious",
         )  # fmt: skip
         allowed("limits", spec.get("limits", {}), "frequency", "power")
         self._ends_hz = limit(spec, "frequency", 100e3, 6e9)
@@ -75,6 +76,10 @@ class Generator(Instrument):
         self._less_db = number(spec.get("combiner", 0.0))
         self._harmonics_db = [-abs(number(h)) for h in spec.get("harmonics", (-35.0, -45.0))]
         self._phases = [draws.phase(f"harmonic {k}") for k in range(len(self._harmonics_db))]
+        self._spurs = []
+        for spur in spec.get("spurious", ()):
+            allowed("a spurious line", spur, "offset", "level")
+            self._spurs.append((number(spur["offset"]), -abs(number(spur["level"]))))
         self._error_db = draws.normal("level", number(spec.get("level error", 0.2)))
         self._flatness_db = number(spec.get("flatness", 0.15))
         self._ripples = [
@@ -160,16 +165,17 @@ class Generator(Instrument):
         return self.power + float(error_db) + warm - self._less_db
 
     def signal(self) -> Signal:
-        """The carrier with its harmonics and broadband noise; off: the noise of its termination."""
+        """The carrier with harmonics, spurious lines and broadband noise; off: noise of a termination."""
         if not self.output:
             return Signal.none()
         f_hz = self.frequency * (1 + self._off)
         level = self.true_level_dbm(f_hz)
-        levels = np.array([level, *(level + harmonic for harmonic in self._harmonics_db)])
+        levels = np.array([level, *(level + below for below in self._harmonics_db)])
         wave: Plane = 10 ** (levels / 20) * np.array([1.0 + 0j, *self._phases])
+        tones = f_hz * np.arange(1, len(levels) + 1, dtype=np.float64)
+        beside = [(f_hz + offset, level + below) for offset, below in self._spurs if f_hz + offset > 0]
+        if beside:
+            tones = np.concatenate([tones, [f for f, _ in beside]])
+            wave = np.concatenate([wave, [10 ** (spur / 20) for _, spur in beside]])
         less = self._noise_mw_hz * 10 ** (-self._less_db / 10)
-        return Signal(
-            f_hz * np.arange(1, len(levels) + 1, dtype=np.float64),
-            wave,
-            lambda at_hz: np.full(len(at_hz), KT0_MW_HZ + less),
-        )
+        return Signal(tones, wave, lambda at_hz: np.full(len(at_hz), KT0_MW_HZ + less))

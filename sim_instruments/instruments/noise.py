@@ -33,7 +33,7 @@ class Noise:
         self.spurious = (number(spurious["every"]), number(spurious["level"])) if spurious else None
         self.generator = generator
 
-    def on(self, m: Matrix, bandwidth_hz: float, power_dbm: float, averages: int) -> Matrix:
+    def on(self, m: Matrix, bandwidth_hz: float, power_dbm: float | Real, averages: int) -> Matrix:
         """A floor that source power lifts readings above, and trace noise in proportion to the reading.
 
         Parameters
@@ -43,11 +43,13 @@ class Noise:
         bandwidth_hz
             Noise power goes with it.
         power_dbm
-            Of the source.
+            Of the source, one or ``(f,)``.
         averages
             Noise power goes down with it.
         """
         root = np.sqrt(1.0 / averages)
+        if np.ndim(power_dbm):
+            power_dbm = np.asarray(power_dbm)[:, None, None]
         floor = 10 ** ((self.floor_dbm_hz + 10 * np.log10(bandwidth_hz) - power_dbm) / 20) * root
         trace = (10 ** (self.trace_db / 20) - 1) * np.sqrt(bandwidth_hz / 1e3) * root
         draws = self._complex(2, m.shape)
@@ -67,7 +69,7 @@ class Noise:
         tenth = 10 ** (0.1 / 10) - 1
         return np.asarray((1 + tenth * 10 ** ((level_dbm - self.compression_dbm) / 10)) ** -0.5)
 
-    def spurs(self, f_hz: Real, bandwidth_hz: float, power_dbm: float) -> Real:
+    def spurs(self, f_hz: Real, bandwidth_hz: float, power_dbm: float | Real) -> Real:
         """Spurious responses against the source, ``(f,)``, linear; 0 where there is none."""
         if self.spurious is None:
             return np.zeros(len(f_hz))

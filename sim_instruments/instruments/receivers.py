@@ -15,7 +15,7 @@ from typing import Any
 import numpy as np
 
 from sim_instruments.draws import Draws
-from sim_instruments.instruments.ageing import Ageing
+from sim_instruments.instruments.ageing import COLD_DB, Ageing
 from sim_instruments.instruments.noise import Noise
 from sim_instruments.values import number
 from sim_instruments.waves import Matrix, Plane, Real, chain, empty, flip, join, line, two
@@ -118,7 +118,7 @@ class Receivers:
             m[:, far - 1, port - 1] = whole[:, 1, 0] + shape[f"leak {port}"]
         return m
 
-    def noisy(self, m: Matrix, bandwidth_hz: float, power_dbm: float, averages: int) -> Matrix:
+    def noisy(self, m: Matrix, bandwidth_hz: float, power_dbm: float | Real, averages: int) -> Matrix:
         """With noise, see :class:`Noise`."""
         return self.noise.on(m, bandwidth_hz, power_dbm, averages)
 
@@ -207,9 +207,9 @@ class WorldReadings:
         self.receivers = receivers
 
     def read(
-        self, f_hz: Real, bandwidth_hz: float, power_dbm: float, averages: int, source_on: bool
+        self, f_hz: Real, bandwidth_hz: float, power_dbm: float | Real, averages: int, source_on: bool
     ) -> Matrix:
-        """Raw readings ``(f, 2, 2)`` of what is connected now."""
+        """Raw readings ``(f, 2, 2)`` of what is connected now, at one level or at one a point."""
         if not source_on:
             return self.receivers.nothing(len(f_hz))
         world = self.world
@@ -222,6 +222,10 @@ class WorldReadings:
         raw[:, 0, 1] += (spurs := self.receivers.noise.spurs(f_hz, bandwidth_hz, power_dbm))
         raw[:, 1, 0] += spurs
         return self.receivers.noisy(raw, bandwidth_hz, power_dbm, averages)
+
+    def is_cold(self) -> bool:
+        """Whether readings still move because it was switched on not long ago."""
+        return self.receivers.ageing.cold_db(self.world.time_s) > COLD_DB
 
     def switch_terms(self, f_hz: Real) -> Matrix:
         """What the idle port reflects, with port 1 and with port 2 driven, ``(f, 2)``."""

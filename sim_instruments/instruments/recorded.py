@@ -44,8 +44,12 @@ class Recorded:
         """
         raise ScpiError(-241, "no recording of the idle port")
 
+    def is_cold(self) -> bool:
+        """A recording does not warm up."""
+        return False
+
     def read(
-        self, f_hz: Real, bandwidth_hz: float, power_dbm: float, averages: int, source_on: bool
+        self, f_hz: Real, bandwidth_hz: float, power_dbm: float | Real, averages: int, source_on: bool
     ) -> Matrix:
         """The recording of what is connected.
 

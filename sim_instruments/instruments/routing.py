@@ -144,7 +144,7 @@ class WiredWorld(World):
     def between_ports(
         self,
         f_hz: Real,
-        power_dbm: float | None = None,
+        power_dbm: float | Real | None = None,
         driven: int = 1,
         ports: tuple[int, int] = (1, 2),
     ) -> Matrix:
@@ -155,7 +155,7 @@ class WiredWorld(World):
         f_hz
             ``(f,)``.
         power_dbm
-            Level of the wave that meets the connection; none given: too low to matter.
+            Level of the wave that meets the connection, one or ``(f,)``; none given: too low to matter.
         driven
             The port it comes from.
         ports

@@ -57,7 +57,8 @@ class Mixer:
         ``compression`` (1 dB), ``overload``: dBm at the mixer; ``headroom``: dB above the reference level at
         which the converter clips; ``phase noise``: dBc in 1 Hz at 10 kHz; ``level error``, ``flatness`` (dB,
         one standard deviation), ``attenuator error`` (dB for each 10 dB), ``drift`` (dB/K), ``reference``
-        (relative).
+        (relative); ``residual``: a list of ``{at, level}``, lines in Hz and dBm at the mixer that are there
+        without any signal.
     draws
         What makes this specimen.
     """
@@ -65,6 +66,7 @@ class Mixer:
     keys = (
         "noise figure", "second harmonic intercept", "third order intercept", "compression", "overload",
         "headroom", "phase noise", "level error", "flatness", "attenuator error", "drift", "reference",
+        "residual",
     )  # fmt: skip
 
     def __init__(self, spec: Mapping[str, Any], draws: Draws) -> None:
@@ -80,6 +82,10 @@ class Mixer:
         self.step_db = draws.normal("attenuator", number(spec.get("attenuator error", 0.05)))
         self.drift_db_k = number(spec.get("drift", 0.01))
         self.off = draws.normal("reference", number(spec.get("reference", 1e-7)))
+        self.residual = []
+        for line in spec.get("residual", ()):
+            allowed("a residual line", line, "at", "level")
+            self.residual.append((number(line["at"]), number(line["level"])))
         self._ripples = [
             (draws.uniform(f"ripple {k}", 0.2e-9, 3e-9), draws.uniform(f"ripple phase {k}", 0.0, 6.28))
             for k in range(3)
@@ -204,6 +210,8 @@ class SpectrumAnalyzer(Sweeping):
         tones = np.zeros(len(grid))
         for f_hz, wave in zip(mixed.f_hz, mixed.wave, strict=True):
             tones += abs(wave) ** 2 * seen_tone(sweep, f_hz / scale)
+        for f_hz, level_dbm in self.mixer.residual:
+            tones += milliwatt(level_dbm + c.attenuation) * seen_tone(sweep, f_hz)
         density = mixed.noise(grid) + self.mixer.phase_noise_mw(grid, mixed)
         noise = density * NOISE_BANDWIDTH * c.resolution
         level = dbm(shown(sweep, tones, noise, self.generator))

@@ -100,3 +100,32 @@ def test_an_amplifier_compresses_in_the_reading_of_its_own_direction() -> None:
     change = 20 * np.log10(abs(high / low))
     np.testing.assert_allclose(change[:, 1, 0], -1.0, atol=0.1)
     np.testing.assert_allclose(change[:, 0, 1], 0.0, atol=0.05)
+
+
+def _levels(power: object, spec: dict[str, Any]) -> np.ndarray:
+    """S21 and S12 of the stage in dB, at one frequency, ``(f, 2)``."""
+    stage = {"kind": "amplifier", "gain": 16, "at": 169e6, "corner": 900e6, "input": 16, "output": 14,
+             "reverse": 28, "P1dB": 20, "noise figure": 3, "supply": 5, "current": 0.08}  # fmt: skip
+    world = World(1, {"stage": build(stage, Draws(1))})
+    world.connect([(["stage"], [1, 2])])
+    readings = WorldReadings(world, Receivers(spec, Draws(1)))
+    m = readings.read(np.full(3, 169e6), 1e3, power, 1, True)  # type: ignore[arg-type]
+    return np.asarray(20 * np.log10(abs(m[:, [1, 0], [0, 1]])))
+
+
+def test_a_power_sweep_compresses_point_by_point() -> None:
+    """The same readings as three sweeps of one level each: amplifier and receivers heed the point's."""
+    spec = {**SPEC, "noise": "-250 dBm", "trace noise": 0, "compression": "12 dBm"}
+    swept = _levels(np.array([-20.0, 0.0, 5.0]), spec)
+    for k, level in enumerate((-20.0, 0.0, 5.0)):
+        np.testing.assert_allclose(swept[k], _levels(level, spec)[k], rtol=0, atol=1e-9)
+    assert swept[2, 0] < swept[0, 0] - 1.0
+
+
+def test_the_floor_of_a_power_sweep_falls_as_the_level_rises() -> None:
+    """20 dB more source, 20 dB less noise against it: 3000 points each, within a decibel."""
+    noise = Noise({**SPEC, "trace noise": 0, "noise": "-100 dBm"}, np.random.default_rng(1))
+    seen = noise.on(np.zeros((6000, 2, 2), np.complex128), 1e3, np.repeat([-30.0, -10.0], 3000), 1)
+    low, high = 20 * np.log10(np.sqrt(np.mean(abs(seen.reshape(2, 3000, 4)) ** 2, axis=(1, 2))))
+    assert low == pytest.approx(-40.0, abs=0.2)
+    assert high == pytest.approx(-60.0, abs=0.2)

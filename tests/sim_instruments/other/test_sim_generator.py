@@ -118,3 +118,15 @@ def test_descriptions_that_make_no_sense(make_bench, generator, change, says: st
     """A sentence with the value and what was allowed."""
     with pytest.raises(ValueError, match=says):
         make_bench().add(generator, **change)
+
+
+def test_spurious_lines_stand_beside_the_carrier(make_bench, generator) -> None:
+    """Where they are declared, that much below it; none below 0 Hz."""
+    client = make_bench().add(
+        generator, spurious=[{"offset": 8e6, "level": "-60 dB"}, {"offset": -2e8, "level": 50}]
+    )
+    client.write("FREQ 100 MHZ;:POW 0 DBM;:OUTP ON")
+    signal = client.instrument.signal()
+    lines = dict(zip(signal.f_hz.tolist(), dbm(abs(signal.wave) ** 2).tolist(), strict=True))
+    assert lines[108e6] == pytest.approx(lines[100e6] - 60.0)
+    assert min(lines) > 0

@@ -194,3 +194,12 @@ def test_descriptions_that_make_no_sense(make_bench, analyzer, change, says: str
     """A sentence with the value and what was allowed."""
     with pytest.raises(ValueError, match=says):
         make_bench().add(analyzer, **change)
+
+
+def test_residual_lines_are_there_without_a_signal(make_bench, analyzer) -> None:
+    """They belong to the mixer: attenuation lifts them, as it lifts the floor."""
+    analyzer["mixer"]["residual"] = [{"at": "50 MHz", "level": "-90 dBm"}]
+    client = make_bench().add(analyzer)
+    settings = "FREQ:CENT 50 MHZ;SPAN 10 KHZ;:BAND 100 HZ;:SWE:POIN 101"
+    heights = [client.trace(settings, f"POW:ATT {db}")[50] for db in (0, 20)]
+    assert heights == pytest.approx([-90.0, -70.0], abs=0.3)

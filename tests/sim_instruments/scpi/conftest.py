@@ -24,6 +24,9 @@ class CountedReadings:
         m += self.made + np.array([[11, 12], [21, 22]])
         return m * 1e-3
 
+    def is_cold(self) -> bool:
+        return False
+
 
 class Bench:
     """One line to one analyzer, as a client that reads at once sees it."""

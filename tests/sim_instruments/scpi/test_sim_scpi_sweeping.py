@@ -185,3 +185,27 @@ def test_centre_and_span_stay_within_the_range(make_bench):
 def _value(bench) -> float:
     bench.write("CALC:DATA?")
     return float(np.frombuffer(bench.read()[4:-1], ">f8")[0])
+
+
+def test_a_power_sweep_is_one_of_levels_at_one_frequency(bench) -> None:
+    """GRID answers the levels; frequency settings are kept for later."""
+    bench.write("FREQ:CW 169.4 MHZ;STAR 100 MHZ;STOP 200 MHZ;:SOUR:POW:MODE SWE;STAR -30 DBM;STOP 0 DBM")
+    bench.write("SWE:POIN 4;:OUTP ON;:INIT")
+    assert [float(x) for x in bench.ask("TRAC? GRID").split(",")] == [-30.0, -20.0, -10.0, 0.0]
+    assert bench.ask("TRAC:POIN? MATRIX;:SOUR:POW:MODE?;:FREQ:CW?") == "4;SWE;169400000"
+    bench.write("SOUR:POW:MODE FIX;:INIT")
+    assert [float(x) for x in bench.ask("TRAC? GRID").split(",")][0] == 100e6
+
+
+def test_a_power_sweep_needs_its_ends_in_order(bench) -> None:
+    """-221 when it begins."""
+    assert bench.after("SOUR:POW:MODE SWE;STAR 0;STOP -20") == []
+    assert bench.after("INIT") == [-221]
+
+
+def test_a_cold_instrument_says_so(make_bench) -> None:
+    """Bit 4 (temperature) of QUEStionable (SCPI-1999 Vol. 2, 20.3, from memory)."""
+    bench = make_bench()
+    assert bench.ask("STAT:QUES:COND?") == "0"
+    bench.readings.is_cold = lambda: True
+    assert bench.ask("STAT:QUES:COND?") == "16"
