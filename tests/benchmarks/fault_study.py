@@ -19,6 +19,7 @@ import tempfile
 import time
 from pathlib import Path
 
+from benchrun.engine.events import Event, Noted
 from benchrun.engine.plan import Plan, bench_for, make_plan
 from benchrun.engine.rehearsal import prepare_rehearsal
 from benchrun.engine.run import Job, Outcome, run
@@ -49,7 +50,7 @@ class Row:
     told: collections.Counter[str] = dataclasses.field(default_factory=collections.Counter)
     idle: int = 0
     quiet: collections.Counter[str] = dataclasses.field(default_factory=collections.Counter)
-    """Sequences in which it struck and a good unit passed: harmless there, or not noticed."""
+    """Sequences in which it struck and a good unit passed with nothing said: harmless there, or not noticed."""
 
     def add(self, other: Row) -> None:
         """Count in what it did elsewhere."""
@@ -60,8 +61,16 @@ class Row:
         self.idle += other.idle
 
 
-def rehearse(plan: Plan, fault: str, unit: str, seed: int, folder: Path) -> tuple[Outcome, bool]:
-    """One run with one fault, and whether it struck."""
+def rehearse(
+    plan: Plan, fault: str, unit: str, seed: int, folder: Path
+) -> tuple[Outcome, bool, tuple[str, ...]]:
+    """One run with one fault, whether it struck, and what the operator was told of trouble."""
+    told: list[str] = []
+
+    def listen(event: Event) -> None:
+        if isinstance(event, Noted) and event.weight == "warning":
+            told.append(event.text)
+
     rehearsal, store = prepare_rehearsal(plan.bench, seed, [fault]), KeyStore(folder / "home")
     outcome = run(
         Job(
@@ -72,12 +81,13 @@ def rehearse(plan: Plan, fault: str, unit: str, seed: int, folder: Path) -> tupl
             clock=rehearsal.clock,
             records=folder / "records",
             signer=lambda _: store.rehearsal(),
-            sink=lambda _: None,
+            sink=listen,
             library=rehearsal.library,
             seed=seed,
         )
     )[0]
-    return outcome, any(when.happened for when in rehearsal.bench.injected)
+    told += [outcome.reason] if outcome.reason else []
+    return outcome, any(when.happened for when in rehearsal.bench.injected), tuple(told)
 
 
 def counted(found: collections.Counter[str]) -> str:
@@ -87,7 +97,9 @@ def counted(found: collections.Counter[str]) -> str:
 
 def gist(reason: str) -> str:
     """A reason without what differs from run to run, so that the same ones can be counted."""
-    words = re.sub(r"^GPIB0::\d+::INSTR( after '[^']*')?", "the instrument", reason.split(". ")[0])
+    words = re.sub(
+        r"^(swept again: )?GPIB0::\d+::INSTR( after '[^']*')?", r"\1the instrument", reason.split(". ")[0]
+    )
     words = re.sub(r"'[^']*'", "'...'", words)
     words = re.sub(r"[-+]?\d+\.?\d*(e[-+]?\d+)?", "#", words)
     return words.replace("|", "/").strip()
@@ -103,7 +115,7 @@ def study(sequence: str, seeds: int) -> tuple[dict[str, Row], list[str], int]:
             for seed in range(1, seeds + 1):
                 for after in OCCASIONS[what.where]:
                     for which, unit in enumerate(UNITS[sequence]):
-                        outcome, struck = rehearse(plan, f"{fault}@{after}", unit, seed, Path(name))
+                        outcome, struck, told = rehearse(plan, f"{fault}@{after}", unit, seed, Path(name))
                         conclusion, runs = outcome.conclusion.value, runs + 1
                         if which == BAD and conclusion in ("pass", "conditional pass"):
                             escapes.append(f"{sequence} {unit} seed {seed} {fault}@{after}: {conclusion}")
@@ -111,9 +123,8 @@ def study(sequence: str, seeds: int) -> tuple[dict[str, Row], list[str], int]:
                             row.idle += 1
                             continue
                         row.found[which][conclusion] += 1
-                        if outcome.reason:
-                            row.told[gist(outcome.reason)] += 1
-                        if which == GOOD and conclusion == "pass":
+                        row.told.update({gist(text) for text in told})
+                        if which == GOOD and conclusion == "pass" and not told:
                             row.quiet[sequence] += 1
     return rows, escapes, runs
 
@@ -135,7 +146,7 @@ def main(seeds: int, sequences: list[str]) -> int:
     for fault, row in rows.items():
         told = "; ".join(f"{text} ({count})" for text, count in row.told.most_common(2))
         print(f"| {fault} | {counted(row.found[GOOD])} | {counted(row.found[BAD])} | {told or '-'} |")
-    print("\nStruck, and a good unit passed (harmless there, or not noticed):\n")
+    print("\nStruck, and a good unit passed with nothing said (harmless there, or not noticed):\n")
     for fault, row in rows.items():
         if row.quiet:
             print(f"- {fault}: {counted(row.quiet)}")
