@@ -23,16 +23,17 @@ __all__ = ["command", "signer_of"]
     "--unit",
     "units",
     multiple=True,
-    required=True,
     metavar="SERIAL",
     help="Unit; may be given several times.",
 )
+@click.option("--batch", is_flag=True, help="Ask for unit after unit until there are no more.")
 @click.option("--key", metavar="NAME", help="Key that signs; needed only if there are several.")
 @common
 def command(
     sequence: str,
     bench: str,
     units: tuple[str, ...],
+    batch: bool,
     key: str | None,
     operator: str | None,
     records: Path,
@@ -42,13 +43,21 @@ def command(
     """Run SEQUENCE at the instruments of a bench file.
 
     SEQUENCE is a file, or a name found in ./sequences, then among the installed ones. You are asked for each
-    connection; Enter goes on, "stop" ends the run. Several units share one calibration. The record is signed
-    with your key (benchrun keys make NAME); its passphrase comes from BENCHRUN_PASSPHRASE or is asked.
+    connection; Enter goes on, "stop" ends the run. Several units share one calibration. With --batch you are
+    asked for one serial number after the other, and each record is finished while you connect the next unit.
+    The record is signed with your key (benchrun keys make NAME); its passphrase comes from
+    BENCHRUN_PASSPHRASE or is asked. A run that breaks off is taken up again by benchrun resume.
     """
     import datetime
 
+    if not units and not batch:
+        raise click.UsageError("Missing option '--unit': name the unit, or be asked for each with --batch")
+    if batch and unattended:
+        raise click.UsageError("--batch asks for serial numbers, and --unattended asks nobody: choose one")
+
     from benchrun.cli.running import ask, report_run
     from benchrun.clock import SystemClock
+    from benchrun.engine.batch import BatchPerson
     from benchrun.engine.job import Job, Orders
     from benchrun.engine.operators import Nobody, Person
     from benchrun.engine.plan import make_plan
@@ -60,14 +69,14 @@ def command(
             plan=plan,
             units=units,
             operator_name=operator_or_user(operator),
-            hands=Nobody() if unattended else Person(ask),
+            hands=Nobody() if unattended else BatchPerson(ask) if batch else Person(ask),
             clock=SystemClock(),
             records=records,
             signer=lambda origin: (
                 signer_of(store, key, unattended) if origin == "measured" else store.rehearsal()
             ),
             sink=sink,
-            orders=Orders(key=key or "", unattended=unattended),
+            orders=Orders(key=key or "", unattended=unattended, batch=batch),
         ),
         as_json,
     )

@@ -11,9 +11,10 @@ import click
 
 if TYPE_CHECKING:
     from benchrun.engine.events import Sink
-    from benchrun.engine.job import Job
+    from benchrun.engine.job import Job, Outcome
     from benchrun.engine.plan import Plan
     from benchrun.engine.story import Story
+    from benchrun.report.screen import Screen
 
 __all__ = ["ask", "job_for", "report_jobs", "report_run"]
 
@@ -61,12 +62,48 @@ def report_jobs(jobs: Sequence[Callable[[Sink], Job]], as_json: bool) -> int:
     from benchrun.report.screen import Screen
 
     screen = Screen(sys.stderr if as_json else sys.stdout, quiet=as_json)
-    outcomes = [outcome for job in jobs for outcome in run(job(screen.show))]
+    outcomes, unsaid = list["Outcome"](), list["Outcome"]()
+    for make in jobs:
+        job = make(screen.show)
+        if job.orders.batch and (job.story is None or not job.story.closing):
+            outcomes += _batch(job, screen, as_json)
+        else:
+            unsaid += run(job)
+    outcomes += unsaid
     if as_json:
         click.echo(document(outcomes) if outcomes else '{"conclusion": null, "units": []}')
-    for outcome in outcomes:
+    for outcome in unsaid:
         screen.finish(outcome)
     return max((outcome.exit_code for outcome in outcomes), default=0)
+
+
+def _batch(job: Job, screen: Screen, as_json: bool) -> tuple[Outcome, ...]:
+    """Run a batch: each unit's conclusion at once, its record when it stands, a summary at the end."""
+    from dataclasses import replace
+
+    from benchrun.engine.batch import BatchDesk
+    from benchrun.engine.run import run
+    from benchrun.engine.tally import tally
+    from benchrun.report.summary import summary
+    from benchrun.sequence.checks import check_serial
+
+    def tell(text: str) -> None:
+        click.echo(text, err=True)
+
+    model, past = job.plan.sequence.model, job.story.units if job.story is not None else []
+    desk = BatchDesk(ask, tell, lambda serial: check_serial(serial, model), [u.serial for u in past])
+
+    def concluded(outcome: Outcome) -> None:
+        desk.concluded(outcome)
+        screen.finish(outcome)
+
+    def kept(outcome: Outcome) -> None:
+        tell(outcome.trouble or f"{outcome.unit}: record {outcome.record}")
+
+    outcomes = run(replace(job, desk=desk, concluded=concluded, kept=kept))
+    for line in summary(tally(outcomes), desk.skipped):
+        click.echo(line, err=as_json)
+    return outcomes
 
 
 def job_for(
@@ -85,6 +122,7 @@ def job_for(
     """
     from benchrun.cli.run import signer_of
     from benchrun.clock import Clock, SystemClock
+    from benchrun.engine.batch import BatchPerson
     from benchrun.engine.job import Job
     from benchrun.engine.operators import Nobody, Operator, Person
     from benchrun.engine.rehearsal import prepare_rehearsal
@@ -93,7 +131,8 @@ def job_for(
     store, orders = KeyStore(), story.orders
     alone = unattended or orders.unattended
     clock: Clock = SystemClock()
-    hands: Operator = Nobody() if alone or story.closing else Person(ask)
+    person = BatchPerson(ask) if orders.batch else Person(ask)
+    hands: Operator = Nobody() if alone or story.closing else person
     library: object = None
     if story.rehearsal:
         library = object()  # nothing is opened where a run is only closed: its world is gone

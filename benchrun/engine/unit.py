@@ -306,6 +306,7 @@ class UnitRun:
             self.journal.line(
                 "reading",
                 reading.contents,
+                sha256=reading.sha256,
                 step=reading.step,
                 hookup=reading.hookup,
                 suffix=suffix(reading.raw),

@@ -26,7 +26,7 @@ COMMANDS = {
     ("keys", "export"): ("NAME",),
     ("rehearse",): ("SEQUENCE", "--bench", "--unit", "--seed", "--fault", "--operator", "--records", "--json", "--unattended"),
     ("resume",): ("RECORDS", "--close", "--key", "--json", "--unattended"),
-    ("run",): ("SEQUENCE", "--bench", "--unit", "--key", "--operator", "--records", "--json", "--unattended"),
+    ("run",): ("SEQUENCE", "--bench", "--unit", "--batch", "--key", "--operator", "--records", "--json", "--unattended"),
     ("sequences",): (),
 }  # fmt: skip
 HEAVY = ("numpy", "pyvisa", "pyvisa_sim", "pydantic", "rich", "skrf", "yaml", "cryptography", "sim_instruments", "orjson")  # fmt: skip
