@@ -221,3 +221,16 @@ def test_a_2x_thru_that_is_too_poor_is_refused(thru, wanted, spoiled, expected):
     with pytest.raises(InvalidMeasurement, match=expected) as caught:
         DeEmbedArithmetic().apply(step, state, {})
     assert "causality" in caught.value.reason
+
+
+@pytest.mark.parametrize("part", [MEDIA.line(0, "m"), MEDIA.open(), MEDIA.short(), MEDIA.match()])
+def test_a_part_without_impedance_matrix_is_renormalised_too(part):
+    # A thru has neither Z nor Y, an open end no Z: an examiner that goes by way of them would be off by 1e-8.
+    out = apply(part, {"renormalise": "75 ohm"})
+    g = (50.0 - 75.0) / (50.0 + 75.0)
+    if part.nports == 2:
+        assert np.allclose(out.nominal.s11, 0.0, atol=1e-15)
+        assert np.allclose(out.nominal.s21, 1.0, atol=1e-15)
+    else:
+        s = part.s[:, 0, 0]
+        assert np.allclose(out.nominal, (s + g) / (1.0 + g * s), atol=1e-15)

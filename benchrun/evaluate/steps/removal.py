@@ -144,18 +144,22 @@ class Impedances:
         return renormalise_reflection(data, self.old[0], self.new[0], self.wave)
 
     def examined(self, source: Network) -> Data:
-        """By scikit-rf's networks, which call the third kind traveling."""
-        import skrf
+        """By scikit-rf's steps of impedance in pseudo-waves, and its change of waves before and after.
 
+        Its ``renormalize`` goes by way of Z, which a thru or an open end does not have.
+        """
+        from skrf.network import impedance_mismatch, s2s
+
+        ports = range(source.ports)
+        old, new = (np.tile(np.array(z)[: source.ports], (len(source.f_hz), 1)) for z in (self.old, self.new))
         kind = "traveling" if self.wave == "travelling" else self.wave
-        network = skrf.Network(
-            frequency=skrf.Frequency.from_f(source.f_hz, unit="hz"),
-            s=source.matrix,
-            z0=self.old[: source.ports],
-            s_def=kind,
-        )
-        network.renormalize(list(self.new[: source.ports]), s_def=kind)
-        return _result(source, network.s)
+        make = _maker(source)
+        result = make(s2s(source.matrix, old, "pseudo", kind))
+        steps = [make(impedance_mismatch(new[:, p], old[:, p], s_def="pseudo")) for p in ports]
+        result = steps[0] ** result
+        if source.ports == 2:
+            result = result ** steps[1].flipped()
+        return _result(source, s2s(result.s, new, kind, "pseudo"))
 
 
 def inverse(two: TwoPort) -> TwoPort:

@@ -37,6 +37,8 @@ _GREATEST_REACTANCE = 1.0
 _RESOLVED = 1e-5
 """What scikit-rf's own fit of the match can resolve in noise, linear reflection."""
 
+_HARDLY = 1e-12
+
 _STEPS = 12
 """Newton steps for the inductance; four suffice from a per-point solution."""
 
@@ -142,6 +144,11 @@ class LineReflectReflectMatch(TwoPortMethod):
         truths[2] = np.asarray((resistance - 1.0) / (resistance + 1.0), np.complex128)
         match = readings[Hookup.of("load", 1).text].s11
 
+        # Behind a thru of no length and no loss one coefficient of its first guess is zero, and it divides by
+        # it; a loss of 1e-12 gives it a guess and changes nothing that could be seen.
+        thru = kit.standards["thru"].two_port(f_hz, kit.z0_ohm)
+        thru = TwoPort(thru.s11, thru.s12 * (1.0 - _HARDLY), thru.s21 * (1.0 - _HARDLY), thru.s22)
+
         def fitted(second: ComplexArray) -> Any:
             calibration = LRRM(
                 measured=[
@@ -150,7 +157,7 @@ class LineReflectReflectMatch(TwoPortMethod):
                     make.hanging(match, match, readings, isolation),
                 ],
                 ideals=[
-                    make.two(kit.standards["thru"].two_port(f_hz, kit.z0_ohm)),
+                    make.two(thru),
                     *(make.both(t, t) for t in (truths[0], second, truths[2])),
                 ],
                 **make.given(readings, isolation),

@@ -105,9 +105,8 @@ class MultilineThruReflectLine(ThruReflectLine):
             turn = np.where(np.real(reflect * np.conj(declared)) < 0.0, -1.0, 1.0)
             s[:, 0, 0] *= turn
             s[:, 1, 1] *= turn
-            network = make.two(TwoPort.of(s * thru.s21[:, None, None]), kit.z0_ohm * (1.0 + g) / (1.0 - g))
-            network.renormalize(kit.z0_ohm, s_def="pseudo")
-            return TwoPort.of(network.s)
+            z = kit.z0_ohm * (1.0 + g) / (1.0 - g)
+            return make.renormalised(TwoPort.of(s * thru.s21[:, None, None]), z, kit.z0_ohm)
 
         return correct
 

@@ -166,9 +166,7 @@ class ThruReflectLine(TwoPortMethod):
                 s[:, 1, 1] *= turn
                 s *= thru.s21[here, None, None]
                 z = kit.z0_ohm * (1.0 + g[here]) / (1.0 - g[here])
-                network = make.two(TwoPort.of(s), z)
-                network.renormalize(kit.z0_ohm, s_def="pseudo")
-                result[here] = network.s
+                result[here] = make.renormalised(TwoPort.of(s), z, kit.z0_ohm).matrix
             return TwoPort.of(result)
 
         return correct
