@@ -51,7 +51,7 @@ SEQUENCE = {
 
 HALVES = {
     "truncated": ("\n".join(ROWS[:100])[:-30] + "\n", "half.s2p:101:1: ends in the middle of a frequency: 8 of 9 numbers. The file is cut off."),
-    "other impedance": (JIG.replace("R 50.0", "R 75.0"), "filter.yaml:14:48: half.s2p is given for 75 ohm, but the calibration is for 50 ohm. Convert"),
+    "other impedance": (JIG.replace("R 50.0", "R 75.0"), "filter.yaml:14:48: half.s2p is given for 75 ohm, but the result it is taken out of for 50 ohm. Convert"),
     "other frequencies": ("\n".join(ROWS[:60]) + "\n", "filter.yaml:14:48: half.s2p covers 1 MHz to 285 MHz, but the sweep 5 MHz to 1.2 GHz. Use a file that reaches"),
     "too few frequencies": ("\n".join([*ROWS[:3], *ROWS[40:300:120], ROWS[-1]]) + "\n", "too few to fill in between"),
     "not a number": (JIG.replace(ROWS[50].split()[3], "nan"), "half.s2p:51:56: 'nan' is not a finite number. The reading failed there; read it again."),
