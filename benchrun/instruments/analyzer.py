@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchrun.errors import BenchError, DeadlineExceeded, InputError, InvalidMeasurement, ReplyError
+from benchrun.errors import DeadlineExceeded, InputError, InvalidMeasurement, ReplyError
 from benchrun.instruments.dialect import Dialect
+from benchrun.instruments.safety import switched_off
 from benchrun.quantity import Dimension, render
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 from benchrun.scpi.keywords import compound
@@ -273,6 +274,15 @@ class NetworkAnalyzer:
                 "Trigger a new sweep; if it stays, reset the analyzer.",
             )
 
+    def off(self) -> None:
+        """Source off.
+
+        Raises
+        ------
+        InstrumentError, TransportError, ReplyError
+        """
+        self.session.set(*self.dialect.source_off)
+
     def make_safe(self) -> str:
         """Source off, as far as the line allows.
 
@@ -281,12 +291,4 @@ class NetworkAnalyzer:
         str
             Empty when the source is off; otherwise what is left on and what to do by hand.
         """
-        try:
-            self.session.set(*self.dialect.source_off)
-        except BenchError:
-            try:  # a half-read answer may stand in the way: clear the line and say it once more
-                self.session.clear()
-                self.session.set(*self.dialect.source_off)
-            except BenchError as error:
-                return f"the source of {self.session.name} may still be on ({error}): switch it off by hand"
-        return ""
+        return switched_off(self.session, self.off, "the source of")

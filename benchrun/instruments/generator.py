@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from benchrun.errors import BenchError
+from benchrun.instruments.safety import switched_off
 from benchrun.instruments.scalar_dialects import GeneratorDialect
 from benchrun.scpi.session import Session
 
@@ -55,12 +55,4 @@ class SignalGenerator:
 
     def make_safe(self) -> str:
         """Output off, as far as the line allows; empty, or what is left on and what to do by hand."""
-        try:
-            self.off()
-        except BenchError:
-            try:
-                self.session.clear()
-                self.off()
-            except BenchError as error:
-                return f"the output of {self.session.name} may still be on ({error}): switch it off by hand"
-        return ""
+        return switched_off(self.session, self.off, "the output of")

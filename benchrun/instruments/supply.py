@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from benchrun.errors import BenchError, InvalidMeasurement
+from benchrun.errors import InvalidMeasurement
+from benchrun.instruments.safety import switched_off
 from benchrun.instruments.scalar_dialects import SupplyDialect
 from benchrun.scpi.session import Session
 
@@ -93,12 +94,4 @@ class Supply:
 
     def make_safe(self) -> str:
         """Output off, as far as the line allows; empty, or what is left on and what to do by hand."""
-        try:
-            self.off()
-        except BenchError:
-            try:
-                self.session.clear()
-                self.off()
-            except BenchError as error:
-                return f"the supply {self.session.name} may still be on ({error}): switch it off by hand"
-        return ""
+        return switched_off(self.session, self.off, "the supply")
