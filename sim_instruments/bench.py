@@ -15,6 +15,7 @@ from sim_instruments.instruments.kinds import KINDS
 from sim_instruments.instruments.receivers import Receivers, WorldReadings
 from sim_instruments.instruments.recorded import Recorded
 from sim_instruments.instruments.routing import WiredWorld
+from sim_instruments.instruments.settings import allowed
 from sim_instruments.parts import Part, build
 from sim_instruments.scpi.instrument import Instrument
 from sim_instruments.trouble import BadBench, at, table
@@ -131,12 +132,14 @@ def _instrument(
     kind = spec["kind"]
     model, serial = str(spec.get("model", "NA-2")), str(spec.get("serial", "0001"))
     if kind == "network analyzer":
+        allowed("a network analyzer", spec, "kind", "model", "serial", "limits", "manners", "receivers")
         receivers = Receivers(spec["receivers"], draws / "instrument" / resource)
         return Analyzer(
             world, WorldReadings(world, receivers), ("SIMULATED", model, serial, "1.0"),
             spec.get("limits"), spec.get("manners"),
         )  # fmt: skip
     if kind == "recorded readings":
+        allowed("an analyzer of recorded readings", spec, "kind", "model", "serial", "readings")
         files = {str(what): folder / str(file) for what, file in spec["readings"].items()}
         return Analyzer(world, Recorded(world, files), ("RECORDED", model, serial, "1.0"))
     if kind in KINDS:

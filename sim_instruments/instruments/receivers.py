@@ -17,6 +17,7 @@ import numpy as np
 from sim_instruments.draws import Draws
 from sim_instruments.instruments.ageing import COLD_DB, Ageing
 from sim_instruments.instruments.noise import Noise
+from sim_instruments.instruments.settings import allowed
 from sim_instruments.values import number
 from sim_instruments.waves import Matrix, Plane, Real, chain, empty, flip, join, line, two
 from sim_instruments.world import World
@@ -59,7 +60,14 @@ class Receivers:
         What makes this specimen.
     """
 
+    keys = (
+        "directivity", "source match", "load match", "isolation", "tracking", "cable", "noise", "trace noise",
+        "compression", "spurious", "warm-up", "on for", "drift",
+    )  # fmt: skip
+
     def __init__(self, spec: Mapping[str, Any], draws: Draws) -> None:
+        allowed("receivers", spec, *self.keys)
+        allowed("their cable", spec["cable"], "delay", "loss", "drift", "bend")
         self.draws = draws
         self.size = {
             key: 10 ** (-abs(number(spec[key])) / 20)
