@@ -24,8 +24,13 @@ from sim_instruments.doors.visa import simulated_visa
 
 ANALYZER = "GPIB0::16::INSTR"
 POINTS = (1601, 20001)
-TARGETS_MS = {("read", "in process", 20001): 30.0, ("read", "HiSLIP", 20001): 50.0, ("world", "", 0): 20.0,
-              ("sweep", "", 1601): 5.0}  # fmt: skip
+BENCHES = ("workshop", "amplifier")
+TARGETS_MS = {
+    ("read", "in process", 20001): 30.0,
+    ("read", "HiSLIP", 20001): 50.0,
+    ("sweep", "", 1601): 5.0,
+    **{("world", name, 0): 20.0 for name in BENCHES},
+}
 
 
 def median_ms(work: Callable[[], Any], rounds: int, clock: Callable[[], float] = time.perf_counter) -> float:
@@ -98,9 +103,9 @@ def read_block(client: Any, size: int) -> bytes:
 
 def main(rounds: int) -> int:
     """Measure, print, and compare with the targets."""
-    load_bench("workshop", 0)
     rows: list[tuple[str, str, int, float, float]] = [
-        ("world", "", 0, median_ms(lambda: load_bench("workshop", 1), rounds), 0.0)
+        ("world", name, 0, median_ms(lambda name=name: load_bench(name, 1), rounds, time.process_time), 0.0)
+        for name in BENCHES
     ]
     bench = load_bench("workshop", 1)
     bench.world.offer("HF-0001")
@@ -116,7 +121,7 @@ def main(rounds: int) -> int:
         }
         for points in POINTS:
             f = np.geomspace(5e6, 1.2e9, points)
-            yardstick = median_ms(lambda f=f: plain(f, rng), rounds)
+            yardstick = median_ms(lambda f=f: plain(f, rng), rounds, time.process_time)
             rows.append(("plain numpy", "", points, yardstick, 1.0))
             for door, client in clients.items():
                 client.read_termination = client.write_termination = "\n"

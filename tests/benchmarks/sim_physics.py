@@ -18,6 +18,7 @@ from sim_instruments.parts import build
 
 POINTS = 1601
 SWEEP_MS, FASTER, WORLD_MS = 5.0, 200.0, 20.0
+BENCHES = ("workshop", "amplifier")
 NINE = {
     "kind": "filter", "shape": "chebyshev", "order": 9, "ripple": 0.1, "passes": "low", "edge": "200 MHz",
     "coil q": 140, "capacitor q": 900, "tolerance": "1 %",
@@ -95,16 +96,16 @@ def main() -> int:
     sweep()
     best, usual = processor_ms(sweep)
     bare, bare_usual = processor_ms(lambda: plain(f_hz, generator))
-    made, made_usual = processor_ms(lambda: load_bench("workshop", 1), 30)
+    worlds = {name: processor_ms(lambda name=name: load_bench(name, 1), 30)[1] for name in BENCHES}
     duration_ms = 2 * POINTS * (1.3 / 1e3 + 100e-6) * 1e3
     rows = [
         (f"sweep of {POINTS} points", usual, SWEEP_MS, "ms", usual < SWEEP_MS),
         ("faster than the sweep lasts by", duration_ms / usual, FASTER, "x", duration_ms / usual > FASTER),
-        ("a world", made_usual, WORLD_MS, "ms", made_usual < WORLD_MS),
+        *((f"a world: {name}", ms, WORLD_MS, "ms", ms < WORLD_MS) for name, ms in worlds.items()),
     ]
     for name, value, limit, unit, met in rows:
         print(f"{name:34} {value:9.2f} {unit:3} limit {limit:g} {unit}  {'met' if met else 'NOT MET'}")
-    print(f"best: sweep {best:.2f} ms, world {made:.2f} ms")
+    print(f"best: sweep {best:.2f} ms")
     print(f"ratio to plain numpy: {usual / bare_usual:.2f} (plain {bare_usual:.2f} ms, best {bare:.2f} ms)")
     return 0 if all(row[-1] for row in rows) else 1
 
