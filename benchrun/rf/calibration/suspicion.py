@@ -1,56 +1,35 @@
 """Which connections look wrong, judged from raw readings while a calibration is being made.
 
 Nothing here stops anything: a suspicion is a sentence, a hook-up and a confidence. It compares each
-reading with the others of its port, with the other port, and with what a test port may be at all. The
-rules are our own; where one rests on a formula, that is named at the rule.
+reading with the others of its port, with the other port, and with what a test port may be at all.
 """
 
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
-from dataclasses import dataclass
-from itertools import combinations
 
 import numpy as np
 
+from benchrun.rf.calibration.doubts import Suspicion, jumps, size, surest
+from benchrun.rf.calibration.join_doubts import doubt_joins
 from benchrun.rf.calibration.method import Definitions, Readings
-from benchrun.rf.calibration.one_port import REFLECTIONS, own_reflection
-from benchrun.rf.calibration.plausibility import box_cost, box_of, exchanged, noisiness, steadiness
+from benchrun.rf.calibration.one_port import own_reflection
+from benchrun.rf.calibration.port_doubts import PortReadings, doubt_port
 from benchrun.rf.twoport import ComplexArray, FloatArray, TwoPort
 
-__all__ = ["Suspicion", "suspect"]
+__all__ = ["SURE", "Suspicion", "suspect", "unsteady"]
+
+SURE = 0.6
+"""Confidence from which a connection should be made again; below it a suspicion is a hint."""
 
 _SINGLE = re.compile(r"^(?P<name>.+) on port (?P<port>\d)$")
 _JOINING = re.compile(r"^(?P<name>.+) from port 1 to port 2$")
 
-_ALIKE = 0.02
-"""Two standards whose readings differ by less than this share of a full reflection are one."""
+_POINTS = 201
+"""Points that stand for a sweep where levels, signs and boxes are told from each other."""
 
-_SILENT = 10 ** (-50 / 20)
-"""Level below which a join passes nothing."""
-
-
-@dataclass(frozen=True, slots=True)
-class Suspicion:
-    """One connection that looks wrong.
-
-    Parameters
-    ----------
-    hookup
-        Text of the hook-up whose reading is doubted.
-    reason
-        One sentence: what the reading looks like, and why.
-    confidence
-        0 to 1; above 0.9 hands should be asked to look before going on.
-    looks_like
-        Name of the standard that it looks like; ``"nothing"``, ``"noise"``, ``"loose"``, or empty.
-    """
-
-    hookup: str
-    reason: str
-    confidence: float
-    looks_like: str = ""
+_STEADY = 3e-4
+"""Share of a full reflection within which two sweeps of one connection agree, noise apart: 70 dB."""
 
 
 def suspect(definitions: Definitions, readings: Readings, f_hz: FloatArray) -> list[Suspicion]:
@@ -74,8 +53,8 @@ def suspect(definitions: Definitions, readings: Readings, f_hz: FloatArray) -> l
     found: list[Suspicion] = []
     good: dict[str, TwoPort] = {}
     for text, two in readings.items():
-        single, joining = _SINGLE.match(text), _JOINING.match(text)
-        if single and " and " not in text:
+        single, joining = _single(text), _JOINING.match(text)
+        if single:
             planes = [own_reflection(two, int(single["port"]))]
         elif joining:
             planes = list(two.planes)
@@ -86,18 +65,105 @@ def suspect(definitions: Definitions, readings: Readings, f_hz: FloatArray) -> l
             found.append(broken)
         else:
             good[text] = two
-    ports: dict[int, dict[str, ComplexArray]] = {}
-    for text, two in good.items():
-        if single := _SINGLE.match(text):
-            port = int(single["port"])
-            ports.setdefault(port, {})[single["name"]] = own_reflection(two, port)
-    for port, own in ports.items():
-        found += _one_port(port, own, definitions, good, f_hz)
-    found += _joins(good, ports, definitions)
-    best: dict[str, Suspicion] = {}
-    for one in sorted(found, key=lambda s: -s.confidence):
-        best.setdefault(one.hookup, one)
-    return list(best.values())
+    found += _jumping(good, f_hz)
+    # A couple of hundred points tell levels, signs and boxes as well as thousands do.
+    some = slice(None, None, -(-len(f_hz) // _POINTS))
+    thin = {text: two.map(lambda plane: plane[some]) for text, two in good.items()}
+    thin_definitions = {
+        name: d.map(lambda plane: plane[some]) if isinstance(d, TwoPort) else np.asarray(d)[some]
+        for name, d in definitions.items()
+    }
+    ports = {port: at for port in (1, 2) if (at := _at(port, thin)).own}
+    for at in ports.values():
+        found += doubt_port(at, thin_definitions, f_hz[some])
+    joins = {m["name"]: two for text, two in thin.items() if (m := _JOINING.match(text))}
+    return surest(found + doubt_joins(joins, ports, thin_definitions))
+
+
+def _jumping(readings: Readings, f_hz: FloatArray) -> list[Suspicion]:
+    """Traces that break off somewhere within the sweep."""
+    full = max((size(p) for two in readings.values() for p in (two.s11, two.s22)), default=0.0)
+    found = []
+    for text, two in readings.items():
+        single = _single(text)
+        planes = [own_reflection(two, int(single["port"]))] if single else [two.s21, two.s12]
+        if any(np.any(p) and jumps(p, f_hz, full if single else size(p)) for p in planes):
+            found.append(Suspicion(text, "It jumps within the sweep: a loose contact.", 0.8, "loose"))
+    return found
+
+
+def unsteady(hookup: str, once: TwoPort, again: TwoPort) -> Suspicion | None:
+    """Doubt a connection whose two sweeps, one after the other, do not agree: a contact that wanders.
+
+    A loose load reads like another good load, and no other standard knows better; but it does not read so twice.
+
+    Parameters
+    ----------
+    hookup
+        Text of the hook-up.
+    once, again
+        Its two readings, ``(f,)``.
+
+    Returns
+    -------
+    Suspicion or None
+        None if they agree within 70 dB of a full reflection, noise apart.
+
+    Notes
+    -----
+    Noise is new at every point and a contact is not, so that what the differences of neighbouring points have
+    in common is free of noise in the mean; its own scatter is allowed for three times over.
+    """
+    single = _single(hookup)
+    pairs = list(zip(once.planes, again.planes, strict=True))
+    if single:
+        port = int(single["port"])
+        pairs = [(own_reflection(once, port), own_reflection(again, port))]
+    full = max(float(np.max(np.abs(p))) for p in (*once.planes, *again.planes))
+    for one, two in pairs:
+        moved = _moved(one - two)
+        if moved > _STEADY * full:
+            reason = (
+                f"Two sweeps one after the other differ by {moved / full:.2%} of a full reflection, more than "
+                "noise does: a loose contact."
+            )
+            return Suspicion(hookup, reason, 0.95, "loose")
+    return None
+
+
+def _moved(difference: ComplexArray) -> float:
+    if len(difference) < 5 or not np.isfinite(difference).all():
+        return 0.0
+    power = np.abs(difference) ** 2
+    common = float(np.abs(np.mean(difference[1:] * np.conj(difference[:-1]))))
+    scatter = float(np.mean(power)) / np.sqrt(len(difference) - 1)
+    return float(np.sqrt(max(common - 3.0 * scatter, 0.0)))
+
+
+def _single(text: str) -> re.Match[str] | None:
+    return None if " and " in text else _SINGLE.match(text)
+
+
+def _at(port: int, readings: Readings) -> PortReadings:
+    """Sort out what is known of a port."""
+    own: dict[str, ComplexArray] = {}
+    across: dict[str, ComplexArray] = {}
+    other: dict[str, ComplexArray] = {}
+    rest: list[ComplexArray] = []
+    for text, two in readings.items():
+        single = _single(text)
+        if single is None:
+            continue
+        here, there = own_reflection(two, port), own_reflection(two, 3 - port)
+        if int(single["port"]) == port:
+            own[single["name"]] = here
+            if np.any(there):
+                across[single["name"]] = there
+        else:
+            other[single["name"]] = there
+            if np.any(here):
+                rest.append(here)
+    return PortReadings(port, own, across, tuple(rest), other)
 
 
 def _broken(text: str, planes: list[ComplexArray], f_hz: FloatArray) -> Suspicion | None:
@@ -111,199 +177,3 @@ def _broken(text: str, planes: list[ComplexArray], f_hz: FloatArray) -> Suspicio
         if len(plane) >= 5 and np.any(plane) and np.mean(plane[1:] == plane[:-1]) > 0.5:
             return Suspicion(text, "It stands still: most points are exactly like the one before.", 0.95)
     return None
-
-
-def _one_port(
-    port: int,
-    own: Mapping[str, ComplexArray],
-    definitions: Definitions,
-    readings: Readings,
-    f_hz: FloatArray,
-) -> list[Suspicion]:
-    found: list[Suspicion] = []
-
-    def text(name: str) -> str:
-        return f"{name} on port {port}"
-
-    strong = [n for n in own if n in definitions and _size(np.asarray(definitions[n])) > 0.5]
-    full = max((_size(own[n]) for n in own), default=0.0)
-    for name in strong:
-        if steadiness(own[name]) < 0.35 and _size(own[name]) < 0.02 * max(full, 0.1):
-            found.append(
-                Suspicion(text(name), "It reads like noise: nothing reaches the receiver.", 0.95, "noise")
-            )
-    for (one, a), (two, b) in combinations(own.items(), 2):
-        apart = _size(a - b)
-        if full > 0.0 and apart < _ALIKE * full:
-            reason = f"It reads like the {one} on this port within {apart / full:.1%} of a full reflection."
-            found.append(Suspicion(text(two), f"{reason} Was the standard changed?", 0.95, one))
-    found += _nothing_connected(port, own, definitions, readings, full)
-    for name, plane in own.items():
-        if _jumps(plane, full):
-            found.append(Suspicion(text(name), "It jumps within the sweep: a loose contact.", 0.8, "loose"))
-    if any(s.confidence > 0.9 for s in found):
-        return found
-    three = {n: own[n] for n in REFLECTIONS if n in own and n in definitions}
-    if len(three) == 3:
-        truths = {n: np.asarray(definitions[n]) for n in REFLECTIONS}
-        looks, gain = exchanged(truths, three, f_hz)
-        for name, other in looks.items():
-            if name != other and gain > 1.0:
-                reason = f"It looks like the {other}; with that the test port makes sense, else not."
-                found.append(Suspicion(text(name), reason, _sure(gain), other))
-        cost = box_cost(box_of(truths, three), f_hz)
-        if gain <= 1.0 and cost > 20.0:
-            worst = _least_fitting(three, full)
-            reason = "Short, open and load on this port do not fit one test port; this one fits least."
-            found.append(Suspicion(text(worst), reason, min(0.4 + cost / 200.0, 0.85), "loose"))
-    return found + _levels(port, own, definitions)
-
-
-def _nothing_connected(
-    port: int,
-    own: Mapping[str, ComplexArray],
-    definitions: Definitions,
-    readings: Readings,
-    full: float,
-) -> list[Suspicion]:
-    """A port reads as it does while the other one is being served: then nothing was put on it.
-
-    Needs an analyzer that reads both ports at every hook-up, and at least one hook-up of the other port.
-    """
-    other = 3 - port
-    free = [own_reflection(two, port) for key, two in readings.items() if key.endswith(f" on port {other}")]
-    free = [p for p in free if np.any(p)]
-    found = []
-    for name, plane in own.items():
-        key = f"{name} on port {port}"
-        like_free = [p for p in free if _size(_low(plane - p)) < _ALIKE * full]
-        if not like_free or len(like_free) < len(free) / 2:
-            continue
-        across = own_reflection(readings[key], other)
-        elsewhere = [
-            n
-            for n in REFLECTIONS
-            if (there := readings.get(f"{n} on port {other}")) is not None
-            and _size(_low(across - own_reflection(there, other))) < _ALIKE * full
-        ]
-        if name in elsewhere:
-            reason = f"Port {port} reads as if nothing were on it, and port {other} reads like its {name}."
-            found.append(Suspicion(key, f"{reason} Is it on the wrong port?", 0.95, name))
-        elif name != "open" or _size(np.asarray(definitions.get("open", 1.0), np.complex128) - 1.0) > 0.3:
-            reason = f"Port {port} reads as it does while port {other} is being served: nothing is on it."
-            found.append(Suspicion(key, reason, 0.92, "nothing"))
-    return found
-
-
-def _levels(port: int, own: Mapping[str, ComplexArray], definitions: Definitions) -> list[Suspicion]:
-    """What two readings tell before the third is there: a load reads far below a short or an open."""
-    found: list[Suspicion] = []
-    if len([n for n in REFLECTIONS if n in own]) == 3:
-        return found
-    strong = [n for n in own if n in definitions and _size(np.asarray(definitions[n])) > 0.5]
-    weak = [n for n in own if n in definitions and _size(np.asarray(definitions[n])) < 0.2]
-    for name in weak:
-        for other in strong:
-            ratio = _size(own[name]) / max(_size(own[other]), 1e-12)
-            if ratio > 2.0:
-                reason = f"It reflects {ratio:.1f} times as much as the {other}: the two look exchanged."
-                found.append(Suspicion(f"{name} on port {port}", reason, 0.9, other))
-            elif ratio > 0.6:
-                reason = (
-                    f"It reflects {ratio:.0%} of what the {other} does; a {name} reflects next to nothing."
-                )
-                found.append(Suspicion(f"{name} on port {port}", reason, 0.8, "nothing"))
-    return found
-
-
-def _joins(
-    readings: Readings,
-    ports: Mapping[int, Mapping[str, ComplexArray]],
-    definitions: Definitions,
-) -> list[Suspicion]:
-    found: list[Suspicion] = []
-    joins = {m["name"]: two for text, two in readings.items() if (m := _JOINING.match(text))}
-    passing = {}
-    for name, two in joins.items():
-        text = f"{name} from port 1 to port 2"
-        ways = [p for p in (two.s21, two.s12) if np.any(p)]
-        level = min((_size(p) for p in ways), default=0.0)
-        if level < _SILENT or min((steadiness(p) for p in ways), default=0.0) < 0.5:
-            shown = 20.0 * np.log10(max(level, 1e-12))
-            reason = f"Only {shown:.0f} dB pass, as if the ports were not joined."
-            found.append(Suspicion(text, reason, 0.97, "nothing"))
-            continue
-        passing[name] = two
-        if any(_jumps(p, _size(p)) for p in ways):
-            found.append(Suspicion(text, "It jumps within the sweep: a loose contact.", 0.8, "loose"))
-    for (one, a), (two_name, b) in combinations(passing.items(), 2):
-        if _size(a.s21 - b.s21) < _ALIKE * _size(a.s21):
-            reason = f"It reads like the {one}. Was the standard changed?"
-            found.append(Suspicion(f"{two_name} from port 1 to port 2", reason, 0.95, one))
-    if "thru" in passing:
-        found += _against_thru(passing["thru"], ports, definitions)
-    return found
-
-
-def _against_thru(
-    read: TwoPort, ports: Mapping[int, Mapping[str, ComplexArray]], definitions: Definitions
-) -> list[Suspicion]:
-    """Hold the thru against the standards of both ports.
-
-    In the eight-term model the trackings satisfy ``eR eR' = (e10 e32)(e01 e23)``, and the thru measures the
-    right side: an open taken for a short on one port turns the sign of the left one (Marks 1997).
-    """
-    thru = definitions.get("thru")
-    complete = all(n in ports.get(p, {}) for p in (1, 2) for n in REFLECTIONS)
-    if not isinstance(thru, TwoPort) or not complete or not (np.any(read.s12) and np.any(read.s21)):
-        return []
-    truths = {n: np.asarray(definitions[n]) for n in REFLECTIONS if n in definitions}
-    if len(truths) < 3:
-        return []
-    one, two = (box_of(truths, {n: ports[p][n] for n in REFLECTIONS}) for p in (1, 2))
-    with np.errstate(all="ignore"):
-        inner = (1.0 - one.source_match * thru.s11) * (1.0 - two.source_match * thru.s22)
-        loop = inner - one.source_match * two.source_match * thru.s12 * thru.s21
-        ratio = read.s21 * read.s12 * loop**2 / (thru.s21 * thru.s12 * one.tracking * two.tracking)
-    if not np.isfinite(ratio).all():
-        return []
-    text = "thru from port 1 to port 2"
-    low = _low(ratio)
-    middle = complex(np.median(low.real), np.median(low.imag))
-    if middle.real < -0.5 * abs(middle) and abs(middle) > 0.3:
-        reason = (
-            "Its sign contradicts the standards: on one of the ports short and open look exchanged, or the "
-            "thru is half a wave longer than it is defined."
-        )
-        return [Suspicion(text, reason, 0.9)]
-    off_db = 10.0 * np.log10(max(abs(middle), 1e-12))
-    if abs(off_db) > 1.5:
-        more = "less" if off_db < 0.0 else "more"
-        reason = f"It passes {abs(off_db):.1f} dB {more} than the standards of both ports say it should."
-        return [Suspicion(text, reason, float(min(0.5 + abs(off_db) / 10.0, 0.95)), "loose")]
-    return []
-
-
-def _size(plane: ComplexArray) -> float:
-    return float(np.median(np.abs(plane)))
-
-
-def _low(plane: ComplexArray) -> ComplexArray:
-    """Lower quarter of the sweep, where offsets that no definition holds and moved cables turn least."""
-    return plane[: max(5, len(plane) // 4)]
-
-
-def _jumps(plane: ComplexArray, full: float) -> bool:
-    """Whether single points leave the trace by far more than the others, and by something that matters."""
-    typical, greatest = noisiness(plane)
-    return greatest > 25.0 * typical and greatest > 0.05 * full
-
-
-def _least_fitting(own: Mapping[str, ComplexArray], full: float) -> str:
-    """Name the standard whose level is least like what it should be: two full reflections, one small."""
-    expected = {"short": full, "open": full, "load": 0.0}
-    return max(own, key=lambda n: abs(_size(own[n]) - expected[n]))
-
-
-def _sure(gain: float) -> float:
-    return float(min(1.0 - 0.6 * np.exp(-gain / 6.0), 0.98))
