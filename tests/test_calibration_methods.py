@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from benchrun.errors import InputError
 from benchrun.evaluate.chain import evaluate
 from benchrun.evaluate.readings import decode
 from benchrun.record.keys import KeyStore
@@ -74,8 +75,25 @@ def test_each_method_finds_the_truth_and_its_audit_stands(workplace, method, iso
             assert np.all(off[:, row, column] <= expanded), np.max(off[:, row, column] / expanded)
 
 
-def test_nothing_is_concluded_where_no_line_is_long_enough(workplace):
+def test_a_sweep_that_no_line_serves_is_refused_before_anything_is_connected(workplace):
     text = PAD.replace("METHOD", "TRL").replace("from: 115 MHz", "from: 50 MHz")
-    answer = workplace(text, units=("PD-0001",)).run()
-    assert answer.code == 3
-    assert "between 20 and 160 degrees longer than the thru" in answer.document["reason"]
+    with pytest.raises(InputError, match="no line is 20 to 160 degrees longer than the thru") as caught:
+        workplace(text)
+    assert "at 4 of 52 points between 50 MHz and 98.82 MHz" in str(caught.value)
+    assert "line with 9.1 degrees at 50 MHz" in str(caught.value)
+
+
+def test_the_record_says_what_the_calibration_depends_on(workplace):
+    w = workplace(PAD.replace("METHOD", "SOLT"), units=("PD-0001", "PD-0002"))
+    assert w.run().code == 0
+    first, second = (verify(record, KeyStore()).record.payload for record in w.records)
+    (one,), (two,) = first.calibrations, second.calibrations
+    assert (one.method, one.kit, one.kit_serial) == ("SOLT", "n50-workshop", "KN-014")
+    assert one.kit_due == "2031-06-30"
+    assert (one.from_hz, one.to_hz, one.points, one.spacing) == (115e6, 880e6, 52, "linear")
+    assert (one.bandwidth_hz, one.power_dbm, one.averages, one.ports) == (1e3, -10.0, 1, (1, 2))
+    assert one.analyzer == first.instruments[0].identity
+    assert one.cables == ("phase-stable cable 1 on port 1", "phase-stable cable 2 on port 2")
+    assert (one.operator, one.overruled) == ("tester", "")
+    # The second unit was read under the same calibration, made before its own run began.
+    assert one.made_s > 0 > two.made_s

@@ -6,8 +6,9 @@ import functools
 import json
 import platform
 import sys
+from collections.abc import Iterable
 from dataclasses import dataclass
-from datetime import datetime
+from datetime import datetime, timedelta
 from typing import TYPE_CHECKING
 
 import benchrun
@@ -15,13 +16,18 @@ from benchrun.evaluate.results import result_files
 from benchrun.record.draft import Draft
 from benchrun.record.payload import (
     Agreement,
+    CalibrationEntry,
     InstrumentEntry,
     Payload,
+    ReadingEntry,
     ResultEntry,
     SequenceEntry,
     UnitEntry,
     utc_text,
 )
+from benchrun.sequence.files import load_model
+from benchrun.sequence.kit import KitFile
+from benchrun.sequence.steps import Calibrate
 from benchrun.uncertainty.decision import Conclusion
 
 if TYPE_CHECKING:
@@ -124,6 +130,7 @@ def draft_of(unit: UnitRun, ending: Ending, started: datetime, wall_s: float) ->
             for (step, kind), (path, _) in results.items()
         ),
         agreements=tuple(Agreement(step=s, difference=d) for s, d in state.agreements.items()),
+        calibrations=_calibrations(unit, entries, started),
         software=software(),
         plan=plan.digest,
         residual_seed=plan.procedure.noise_seed,
@@ -139,3 +146,47 @@ def draft_of(unit: UnitRun, ending: Ending, started: datetime, wall_s: float) ->
         if path in stored and stored[path][0] == contents
     }
     return Draft(payload, files, twins)
+
+
+@functools.lru_cache(8)
+def _kit(raw: bytes) -> KitFile:
+    return load_model(raw, "kit", KitFile).model
+
+
+def _calibrations(
+    unit: UnitRun, readings: Iterable[ReadingEntry], started: datetime
+) -> tuple[CalibrationEntry, ...]:
+    """What each calibration depends on: the files say it, and the readings when."""
+    plan, found = unit.job.plan, []
+    identities = {one.role: one.identity.text for one in unit.top.found}
+    cables = tuple(f"{cable.name} on port {cable.port}" for cable in plan.bench.model.cables)
+    taken = {entry.step: entry.taken_s for entry in readings}  # of each step the last
+    for step in plan.sequence.model.steps:
+        if not isinstance(step, Calibrate) or step.name not in unit.state.calibrations:
+            continue
+        kit, setup = _kit(plan.inputs[f"kit:{step.kit}"][1]), plan.sequence.model.sweeps[step.sweep]
+        grid, made_s = setup.grid(), taken[step.name]
+        found.append(
+            CalibrationEntry(
+                step=step.name,
+                method=step.method,
+                kit=kit.kit,
+                kit_serial=kit.serial,
+                kit_due=kit.due.isoformat() if kit.due else "",
+                overruled=step.overrule or "",
+                ports=step.used_ports,
+                from_hz=float(grid[0]),
+                to_hz=float(grid[-1]),
+                points=len(grid),
+                spacing="list" if setup.at is not None else setup.spacing,
+                bandwidth_hz=setup.bandwidth,
+                power_dbm=setup.power,
+                averages=setup.averages,
+                analyzer=identities.get("analyzer", ""),
+                cables=cables,
+                operator=unit.job.operator_name,
+                made_utc=utc_text(started + timedelta(seconds=made_s)),
+                made_s=made_s,
+            )
+        )
+    return tuple(found)

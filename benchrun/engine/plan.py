@@ -27,12 +27,13 @@ from benchrun.record.payload import safe_name
 from benchrun.rf.touchstone import TouchstoneData
 from benchrun.rf.touchstone import read as read_touchstone
 from benchrun.sequence.bench import Bench
-from benchrun.sequence.checks import check_bench, check_kits, check_masks, check_sequence
+from benchrun.sequence.checks import check_bench, check_masks, check_sequence
 from benchrun.sequence.fields import FileModel
 from benchrun.sequence.files import Loaded, read
 from benchrun.sequence.find import find, named
 from benchrun.sequence.fixtures import check_fixtures
 from benchrun.sequence.kit import KitFile
+from benchrun.sequence.kits import check_connectors, check_kits, check_standards
 from benchrun.sequence.loading import read_bytes
 from benchrun.sequence.mask import MaskFile
 from benchrun.sequence.models import Sequence
@@ -56,6 +57,8 @@ class Named:
         Files by the name that the sequence uses.
     fixtures
         Touchstone data with its bytes, by name.
+    standards
+        Measured standards with their bytes, by kit and name in the kit file.
     problems
         What did not resolve or makes no sense.
     """
@@ -63,6 +66,7 @@ class Named:
     kits: Mapping[str, Loaded[KitFile]]
     masks: Mapping[str, Loaded[MaskFile]]
     fixtures: Mapping[str, tuple[bytes, TouchstoneData]]
+    standards: Mapping[tuple[str, str], tuple[bytes, TouchstoneData]]
     problems: tuple[Problem, ...]
 
 
@@ -153,11 +157,34 @@ def resolve(loaded: Loaded[Sequence], today: datetime.date) -> Named:
                         fixtures[name] = raw, read_touchstone(raw, str(file))
                     except InputError as error:
                         problems.extend(error.problems)
-    problems += check_kits(loaded, kits, today)
+    standards: dict[tuple[str, str], tuple[bytes, TouchstoneData]] = {}
+    for name, kit in kits.items():
+        measured, wrong = measured_standards(kit)
+        standards |= {(name, file): found for file, found in measured.items()}
+        problems += wrong
+    files = {kit: {f: data for (k, f), (_, data) in standards.items() if k == kit} for kit in kits}
+    problems += check_kits(loaded, kits, today, files)
     problems += check_masks(loaded, {name: mask.model.build() for name, mask in masks.items()})
     z0 = next((kit.model.impedance for kit in kits.values()), 50.0)
     problems += check_fixtures(loaded, {name: data for name, (_, data) in fixtures.items()}, z0)
-    return Named(kits, masks, fixtures, tuple(problems))
+    return Named(kits, masks, fixtures, standards, tuple(problems))
+
+
+def measured_standards(
+    kit: Loaded[KitFile],
+) -> tuple[dict[str, tuple[bytes, TouchstoneData]], list[Problem]]:
+    """Read the Touchstone files that a kit names; with what is wrong with them."""
+    found: dict[str, tuple[bytes, TouchstoneData]] = {}
+    problems: list[Problem] = []
+    for place, name in kit.model.files().items():
+        line, column = kit.document.place(place)
+        try:
+            file = find("standard", name, kit.folder, Problem("", kit.document.name, line, column))
+            raw = read_bytes(file, FIXTURE_BYTES)
+            found[name] = raw, read_touchstone(raw, str(file))
+        except InputError as error:
+            problems.extend(error.problems)
+    return found, problems + check_standards(kit, {name: data for name, (_, data) in found.items()})
 
 
 def make_plan(sequence: str, bench: str, today: datetime.date) -> Plan:
@@ -183,6 +210,7 @@ def make_plan(sequence: str, bench: str, today: datetime.date) -> Plan:
         bench_file = read(find("bench", bench), Bench)
         dialects = load_dialects(bench_file, loaded.model.roles)
         problems += check_bench(loaded, bench_file.model)
+        problems += check_connectors(loaded, named.kits, bench_file.model)
     except InputError as error:
         problems += error.problems
     if problems or bench_file is None:
@@ -254,6 +282,9 @@ def _inputs(sequence: Loaded[Sequence], bench: Loaded[Bench], named: Named) -> d
     }
     for name, kit in named.kits.items():
         found[f"kit:{name}"] = _free(found, "inputs/kit", name, ".yaml"), kit.document.raw
+    for (kit_name, file), (raw, _) in named.standards.items():
+        free = _free(found, "inputs/standard", file, PurePath(file).suffix)
+        found[f"standard:{kit_name}/{file}"] = free, raw
     for name, mask in named.masks.items():
         found[f"mask:{name}"] = _free(found, "inputs/mask", name, ".yaml"), mask.document.raw
     for name, (raw, _) in named.fixtures.items():
@@ -302,7 +333,10 @@ def check_file(path: Path, today: datetime.date) -> list[Problem]:
             load_dialects(Loaded(model, document, path), model.instruments)
         except InputError as error:
             return list(error.problems)
-    if isinstance(model, KitFile) and model.due and model.due < today:
-        text = f"the kit was due for calibration on {model.due}"
-        return [document.problem(text, ("due",), "Have it calibrated, or use another kit.")]
+    if isinstance(model, KitFile):
+        problems = measured_standards(Loaded(model, document, path))[1]
+        if model.due and model.due < today:
+            text = f"the kit was due for calibration on {model.due}"
+            problems.append(document.problem(text, ("due",), "Have it calibrated, or use another kit."))
+        return problems
     return []

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 from benchrun.evaluate.procedure import NOISE_SEED, Procedure
+from benchrun.rf.kit import Kit
 from benchrun.rf.touchstone import read as read_touchstone
 from benchrun.sequence.bench import Bench
 from benchrun.sequence.files import load_model
@@ -23,7 +24,7 @@ def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure
     ----------
     files
         By logical name: ``"sequence"``, ``"bench"``, ``"kit:NAME"``, ``"mask:NAME"``, ``"fixture:NAME"``,
-        each NAME as the sequence writes it.
+        each NAME as the sequence writes it, and ``"standard:KIT/NAME"`` as the kit file KIT writes it.
     noise_seed
         Of the noise draws.
 
@@ -41,7 +42,7 @@ def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure
     bench = load_model(files["bench"], "bench", Bench).model
     return Procedure(
         load_model(files["sequence"], "sequence", Sequence).model,
-        {name: load_model(raw, name, KitFile).model.build() for name, raw in of("kit").items()},
+        {name: _kit(name, raw, of("standard")) for name, raw in of("kit").items()},
         {name: load_model(raw, name, MaskFile).model.build() for name, raw in of("mask").items()},
         {name: read_touchstone(raw, name) for name, raw in of("fixture").items()},
         bench.uncertainty.terms,
@@ -52,3 +53,9 @@ def build(files: Mapping[str, bytes], noise_seed: int = NOISE_SEED) -> Procedure
         bench.uncertainty.source_terms,
         Effort(bench.uncertainty.trials.number, bench.uncertainty.trials.digits),
     )
+
+
+def _kit(name: str, raw: bytes, measured: Mapping[str, bytes]) -> Kit:
+    own = {key.removeprefix(f"{name}/"): data for key, data in measured.items() if key.startswith(f"{name}/")}
+    files = {key: read_touchstone(data, key) for key, data in own.items()}
+    return load_model(raw, name, KitFile).model.build(files)

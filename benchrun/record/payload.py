@@ -21,6 +21,7 @@ from benchrun.evaluate.judgement import JudgedFigure
 __all__ = [
     "PREDICATE_TYPE",
     "Agreement",
+    "CalibrationEntry",
     "Conclusion",
     "InstrumentEntry",
     "Origin",
@@ -171,6 +172,53 @@ class Agreement(_Entry):
     difference: float
 
 
+class CalibrationEntry(_Entry):
+    """What a calibration depends on; it serves only what is read under the same.
+
+    Parameters
+    ----------
+    step, method, kit, kit_serial
+        As in the sequence and the kit file.
+    kit_due
+        ISO date; empty where the kit has none.
+    overruled
+        Why a kit past its date was used; empty where it was not.
+    ports
+        Analyzer ports.
+    from_hz, to_hz, points, spacing
+        The grid.
+    bandwidth_hz, power_dbm, averages
+        How each point was read.
+    analyzer, cables
+        Identity, and what stands between it and the planes.
+    operator
+        Who connected the standards.
+    made_utc, made_s
+        When its last standard was read: UTC, and on the bench's clock from the start of the unit's run,
+        negative for a calibration that an earlier unit was read with too.
+    """
+
+    step: str
+    method: str
+    kit: str
+    kit_serial: str = ""
+    kit_due: str = ""
+    overruled: str = ""
+    ports: tuple[int, ...]
+    from_hz: float
+    to_hz: float
+    points: int
+    spacing: str
+    bandwidth_hz: float
+    power_dbm: float
+    averages: int
+    analyzer: str
+    cables: tuple[str, ...] = ()
+    operator: str
+    made_utc: UtcText
+    made_s: float
+
+
 class Payload(_Entry):
     """A run in one document.
 
@@ -190,7 +238,7 @@ class Payload(_Entry):
         ISO 8601, UTC.
     bench_seconds, wall_seconds
         Duration on the bench's clock, and on the machine's.
-    instruments, readings, results, agreements
+    instruments, readings, results, agreements, calibrations
         See the entries' own descriptions.
     inputs
         Logical name (``"sequence"``, ``"kit:n50-workshop"``) to file in the record.
@@ -227,6 +275,7 @@ class Payload(_Entry):
     readings: tuple[ReadingEntry, ...] = ()
     results: tuple[ResultEntry, ...] = ()
     agreements: tuple[Agreement, ...] = ()
+    calibrations: tuple[CalibrationEntry, ...] = ()
     software: dict[str, str] = {}
     plan: str
     residual_seed: int = 0

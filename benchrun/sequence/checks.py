@@ -13,8 +13,9 @@ import numpy as np
 from benchrun.errors import InputError, Problem
 from benchrun.quantity import Dimension, render
 from benchrun.rf.twoport import FloatArray
-from benchrun.sequence.equipment import check_bench, check_kits, check_masks
+from benchrun.sequence.equipment import check_bench, check_masks
 from benchrun.sequence.files import Loaded
+from benchrun.sequence.kits import check_kits
 from benchrun.sequence.loading import Document
 from benchrun.sequence.models import Sequence
 from benchrun.sequence.resolve import grid_of, outside, source_of, span, step_paths

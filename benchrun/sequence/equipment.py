@@ -1,8 +1,7 @@
-"""Whole-file checks of a sequence against its kits, its masks and the bench."""
+"""Whole-file checks of a sequence against its masks and the bench."""
 
 from __future__ import annotations
 
-import datetime
 from collections.abc import Iterator, Mapping
 
 import numpy as np
@@ -13,56 +12,12 @@ from benchrun.rf.masks import Mask
 from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.bench import Bench
 from benchrun.sequence.files import Loaded
-from benchrun.sequence.kit import KitFile
 from benchrun.sequence.models import Sequence, SweepSetup
 from benchrun.sequence.resolve import grid_of, outside, span, step_paths
-from benchrun.sequence.steps import Calibrate, Judge, Tone
+from benchrun.sequence.steps import Judge, Tone
 from benchrun.sequence.steps.judge import MaskLimit
 
-__all__ = ["check_bench", "check_kits", "check_masks"]
-
-
-def check_kits(
-    loaded: Loaded[Sequence], kits: Mapping[str, Loaded[KitFile]], today: datetime.date
-) -> list[Problem]:
-    """Check that kits reach over the sweep, hold the standards, and are not past their date.
-
-    Parameters
-    ----------
-    loaded
-        The sequence.
-    kits
-        By the name that the sequence uses; a name that is not there is not checked.
-    today
-        A kit is good on the day it is due.
-    """
-    problems = []
-    for step, path in step_paths(loaded):
-        if not isinstance(step, Calibrate) or step.kit not in kits or step.sweep not in loaded.model.sweeps:
-            continue
-        kit, grid = kits[step.kit].model, loaded.model.sweeps[step.sweep].grid()
-        low, high = kit.frequency
-        said = []
-        if grid[0] < low * (1 - 1e-12) or grid[-1] > high * (1 + 1e-12):
-            said.append(
-                (
-                    f"the sweep {step.sweep} covers {span(grid[0], grid[-1])}, but kit {kit.kit} is defined "
-                    f"only for {span(low, high)}",
-                    "Use another kit or narrow the sweep.",
-                )
-            )
-        lacking = [n for n in step.how.takes(step.options) if n not in kit.standards]
-        if lacking:
-            said.append((f"kit {kit.kit} lacks {', '.join(lacking)} for {step.method}", "Use another kit."))
-        if kit.due and kit.due < today:
-            said.append(
-                (
-                    f"kit {kit.kit} was due for calibration on {kit.due}",
-                    "Have it calibrated, or use another kit.",
-                )
-            )
-        problems += [loaded.document.problem(text, (*path, "kit"), advice) for text, advice in said]
-    return problems
+__all__ = ["check_bench", "check_masks"]
 
 
 def check_masks(loaded: Loaded[Sequence], masks: Mapping[str, Mask]) -> list[Problem]:

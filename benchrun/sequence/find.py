@@ -11,8 +11,12 @@ from benchrun.paths import installed_sequences
 
 __all__ = ["FOLDERS", "find", "named"]
 
-FOLDERS = {"sequence": "", "bench": "benches", "kit": "kits", "mask": "masks", "fixture": "fixtures"}
+FOLDERS = {"sequence": "", "bench": "benches", "kit": "kits", "mask": "masks", "fixture": "fixtures",
+           "standard": "kits"}  # fmt: skip
 """Subfolder of each kind within a folder of sequences."""
+
+_TOUCHSTONE = ("fixture", "standard")
+"""Kinds whose names keep their endings."""
 
 
 def _places(kind: str, beside: Path | None) -> Iterator[Path]:
@@ -42,7 +46,7 @@ def find(kind: str, name: str, beside: Path | None = None, place: Problem | None
     InputError
         If there is none, with the nearest name that exists.
     """
-    ending = "" if kind == "fixture" else ".yaml"
+    ending = "" if kind in _TOUCHSTONE else ".yaml"
     for folder in (beside, Path()) if beside else (Path(),):
         direct = folder / name
         if Path(name).suffix and _is_file(direct):
@@ -68,9 +72,9 @@ def _is_file(path: Path) -> bool:
 def named(kind: str, beside: Path | None = None) -> list[tuple[str, Path]]:
     """All names of a kind, each with the file that it means; sorted."""
     found: dict[str, Path] = {}
-    pattern = "*.s[12]p" if kind == "fixture" else "*.yaml"
+    pattern = "*.s[12]p" if kind in _TOUCHSTONE else "*.yaml"
     for folder in _places(kind, beside):
         if folder.is_dir():
             for path in sorted(folder.glob(pattern)):
-                found.setdefault(path.name if kind == "fixture" else path.stem, path)
+                found.setdefault(path.name if kind in _TOUCHSTONE else path.stem, path)
     return sorted(found.items())

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import datetime
+from collections.abc import Mapping
 from typing import Annotated, Literal
 
-from pydantic import BeforeValidator, Field
+from pydantic import BeforeValidator, Field, model_validator
 
-from benchrun.rf.kit import Kit, Offset, Standard
+from benchrun.rf.kit import Kit, Measured, Offset, Standard
+from benchrun.rf.touchstone import TouchstoneData
 from benchrun.sequence.fields import (
     Capacitance,
     Delay,
@@ -17,6 +19,7 @@ from benchrun.sequence.fields import (
     Inductance,
     LossRate,
     Name,
+    trouble,
 )
 
 __all__ = ["KitFile"]
@@ -56,6 +59,9 @@ class Doubt(FileModel):
     delay: Delay | None = None
     resistance: Impedance | None = None
     inductance: Inductance | None = None
+    reflection: float | None = Field(
+        default=None, gt=0, le=1, description="of a measured standard: real and imaginary part each, linear"
+    )
 
     def by_parameter(self) -> dict[str, float]:
         """By the names of :class:`benchrun.rf.kit.Standard`."""
@@ -65,6 +71,7 @@ class Doubt(FileModel):
             "delay_s": self.delay,
             "resistance_ohm": self.resistance,
             "series_inductance_h": self.inductance,
+            "reflection": self.reflection,
         }
         return {key: value for key, value in named.items() if value is not None}
 
@@ -73,6 +80,9 @@ class StandardFile(FileModel):
     """One standard."""
 
     kind: Literal["open", "short", "load", "thru", "line"]
+    file: str | None = Field(
+        default=None, min_length=1, description="Touchstone file of the standard as measured, beside the kit"
+    )
     offset: OffsetFile = OffsetFile()
     capacitance: CapacitanceFile | None = None
     inductance: InductanceFile | None = None
@@ -80,8 +90,24 @@ class StandardFile(FileModel):
     series_inductance: Inductance = Field(default=0.0, alias="series inductance")
     uncertainty: Doubt = Doubt()
 
-    def build(self) -> Standard:
-        """As numbers."""
+    @model_validator(mode="after")
+    def _measured_or_model(self) -> StandardFile:
+        if self.file is not None:
+            model = ("offset", "capacitance", "inductance", "resistance", "series_inductance")
+            for key in sorted(self.model_fields_set & set(model)):
+                raise trouble(f"is measured (`file`), so `{key}` means nothing", key.replace("_", " "))
+        measured, said = self.file is not None, set(self.uncertainty.by_parameter())
+        if measured != (said <= {"reflection"}) and said:
+            takes = "`reflection`" if measured else "those of its own parameters"
+            raise trouble(f"takes as uncertainty {takes}, not {', '.join(sorted(said))}", "uncertainty")
+        return self
+
+    def build(self, files: Mapping[str, TouchstoneData]) -> Standard | Measured:
+        """As numbers; measured ones from their files by name."""
+        if self.file is not None:
+            data = files[self.file]
+            value = data.two_port if self.kind in ("thru", "line") else data.s[:, 0, 0]
+            return Measured(self.kind, data.f_hz, value, data.z0_ohm, self.uncertainty.by_parameter())
         c, i = self.capacitance, self.inductance
         return Standard(
             self.kind,
@@ -110,13 +136,38 @@ class KitFile(FileModel):
     edition: Literal[1]
     title: str = Field(min_length=1, max_length=120)
     serial: str = Field(default="", max_length=40)
-    connector: str = Field(default="", max_length=40)
+    connector: str = Field(
+        default="",
+        pattern=r"^([^,]{1,40}(, (female|male|sexless))?)?$",
+        description="family and sex: `type N, female`",
+    )
     impedance: Impedance = 50.0
     frequency: FrequencyRange
     due: Annotated[datetime.date, BeforeValidator(_date)] | None = None
     standards: dict[Name, StandardFile] = Field(min_length=1)
 
-    def build(self) -> Kit:
-        """As numbers."""
-        standards = {str(name): standard.build() for name, standard in self.standards.items()}
+    @property
+    def family(self) -> str:
+        """Connector family, without the sex."""
+        return self.connector.split(",")[0].strip()
+
+    def files(self) -> dict[tuple[str, ...], str]:
+        """Touchstone files of measured standards, by their place in the kit file."""
+        named = {("standards", str(name), "file"): one.file for name, one in self.standards.items()}
+        return {place: name for place, name in named.items() if name is not None}
+
+    def build(self, files: Mapping[str, TouchstoneData] | None = None) -> Kit:
+        """As numbers.
+
+        Parameters
+        ----------
+        files
+            Of measured standards, by the name that the kit file uses.
+
+        Raises
+        ------
+        KeyError
+            If one is missing.
+        """
+        standards = {str(name): one.build(files or {}) for name, one in self.standards.items()}
         return Kit(self.kit, standards, *self.frequency, self.impedance, self.serial, self.connector)

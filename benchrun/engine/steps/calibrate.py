@@ -22,6 +22,10 @@ class CalibrateExecution:
 
     def carry_out(self, step: Calibrate, work: AtWork) -> None:
         """As every step with readings; with the thru also what the idle ports reflect, where that can be."""
+        if step.overrule is not None:
+            work.emit(
+                Noted(text=f"kit {step.kit} is past its date; overruled: {step.overrule}", weight="warning")
+            )
         carry_out(step, work, self._idle_ports if step.how.without_switch_terms else None)
 
     def _idle_ports(self, step: StepModel, work: AtWork) -> None:

@@ -39,6 +39,12 @@ class Calibrate(StepModel):
         default=("line",), min_length=1, max_length=8, description="line standards of the kit (TRL)"
     )
     reflect: Name = Field(default="short", description="reflecting standard of the kit (TRL, LRM)")
+    overrule: str | None = Field(
+        default=None,
+        min_length=10,
+        max_length=300,
+        description="why a kit past its date may be used after all; stands in the record",
+    )
     beyond_window: bool = Field(
         default=False,
         alias="beyond window",
