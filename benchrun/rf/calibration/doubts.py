@@ -73,8 +73,8 @@ def jumps(plane: ComplexArray, f_hz: FloatArray, full: float) -> bool:
     Notes
     -----
     A cable turns the phase from point to point, on a logarithmic grid more and more so; the delay is taken
-    out as the reading itself shows it. What remains still bends more where points are farther apart, so that each
-    bend is held against those around it and not against the median of the sweep.
+    out as the reading itself shows it. What remains still bends more where points are farther apart, so that
+    each bend is held against those around it and not against the median of the sweep.
     """
     bend = bends(plane, f_hz)
     suspects = np.flatnonzero(bend > 0.05 * full)

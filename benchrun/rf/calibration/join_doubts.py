@@ -1,4 +1,4 @@
-"""Doubts about what joins the ports: thru and lines, held against each other and against both ports' standards."""
+"""Doubts about what joins the ports, held against each other and against the standards of both ports."""
 
 from __future__ import annotations
 
@@ -68,8 +68,8 @@ def _against_ports(
     """Hold the thru against the standards of both ports.
 
     In the eight-term model the trackings satisfy ``eR eR' = (e10 e32)(e01 e23)``, and the thru measures the
-    right side, receivers' phases and all: an open taken for a short on one port turns the sign of the left one
-    (Marks 1997).
+    right side, receivers' phases and all: an open taken for a short on one port turns the sign of the left
+    one (Marks 1997).
     """
     ratio = _over_standards(read, ports, definitions)
     if ratio is None:

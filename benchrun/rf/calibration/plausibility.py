@@ -78,7 +78,7 @@ def _turns(plane: ComplexArray, at: NDArray[np.intp], off: FloatArray | float = 
 
 
 def bends(plane: ComplexArray, f_hz: FloatArray) -> FloatArray:
-    """Twice the distance of each inner point from the line between its neighbours, delay taken out, ``(f - 2,)``."""
+    """Twice the distance of inner points from the line between their neighbours, delay out, ``(f - 2,)``."""
     if len(plane) < 5 or not np.any(plane):
         return np.zeros(max(len(plane) - 2, 0))
     still = plane * np.exp(2j * np.pi * delay_s(plane, f_hz) * f_hz)

@@ -1,4 +1,4 @@
-"""Doubts about short, open and load of one port: held against each other, the idle port, and the port at rest.
+"""Doubts about short, open and load of one port, held against each other and against the port at rest.
 
 Most analyzers read both ports at every hook-up. So a port is also read while the other one is being served,
 and then mostly nothing is on it: whatever was to hang there and reads the same was not there. Nobody promises
@@ -141,8 +141,8 @@ def _as_at_rest(at: PortReadings, truths: Mapping[str, ComplexArray]) -> list[Su
         there = 3 - at.port
         if _elsewhere(at, name):
             reason = (
-                f"Port {at.port} reads as if nothing were on it, and port {there} not as it does else at rest. "
-                "Is it on the wrong port?"
+                f"Port {at.port} reads as if nothing were on it, and port {there} not as it does else at "
+                "rest. Is it on the wrong port?"
             )
             found.append(Suspicion(at.text(name), reason, 0.96, name))
         else:
@@ -194,10 +194,10 @@ def _levels(at: PortReadings, truths: Mapping[str, ComplexArray], strong: list[s
 
 
 def _opposite(at: PortReadings, truths: Mapping[str, ComplexArray]) -> bool | None:
-    """Whether short and open reflect with opposite sign, as they are defined to; None where that is not known.
+    """Whether short and open reflect with opposite sign, as they are defined to; None if that is not known.
 
-    With the load's reading taken off, which is about the directivity, the ratio of the two readings is that of
-    the definitions times ``(1 - es So) / (1 - es Ss)``, which no source match turns round.
+    With the load's reading taken off, which is about the directivity, the ratio of the two readings is that
+    of the definitions times ``(1 - es So) / (1 - es Ss)``, which no source match turns round.
     """
     if not {"short", "open"} <= set(truths) & set(at.own):
         return None
@@ -210,7 +210,7 @@ def _opposite(at: PortReadings, truths: Mapping[str, ComplexArray]) -> bool | No
 
 
 def _signs(at: PortReadings, truths: Mapping[str, ComplexArray]) -> list[Suspicion]:
-    """Short and open on the same side: one of them is not what it is called, and what else is read says which."""
+    """Short and open on the same side: one of them is not what it is called; what else is read says which."""
     if _opposite(at, truths) is not False:
         return []
     exact = apart(at.own["short"], at.own["open"]) < _SAME * at.full
@@ -276,13 +276,8 @@ def _as_a_port(
     looks, gain = exchanged(truths, three)
     if gain > 1.0:
         reason = "It looks like the {}; with that the test port makes sense, else not."
-        return [
-            Suspicion(
-                at.text(n), reason.format(other), float(min(1.0 - 0.6 * np.exp(-gain / 6.0), 0.98)), other
-            )
-            for n, other in looks.items()
-            if n != other
-        ]
+        sure = float(min(1.0 - 0.6 * np.exp(-gain / 6.0), 0.98))
+        return [Suspicion(at.text(n), reason.format(m), sure, m) for n, m in looks.items() if n != m]
     box = box_of(truths, three)
     cost = box_cost(box)
     if cost > 20.0:

@@ -95,7 +95,7 @@ def _jumping(readings: Readings, f_hz: FloatArray) -> list[Suspicion]:
 def unsteady(hookup: str, once: TwoPort, again: TwoPort) -> Suspicion | None:
     """Doubt a connection whose two sweeps, one after the other, do not agree: a contact that wanders.
 
-    A loose load reads like another good load, and no other standard knows better; but it does not read so twice.
+    A loose load reads like another good load, and no other standard knows better; but not so twice.
 
     Parameters
     ----------
@@ -124,8 +124,8 @@ def unsteady(hookup: str, once: TwoPort, again: TwoPort) -> Suspicion | None:
         moved = _moved(one - two)
         if moved > _STEADY * full:
             reason = (
-                f"Two sweeps one after the other differ by {moved / full:.2%} of a full reflection, more than "
-                "noise does: a loose contact."
+                f"Two sweeps one after the other differ by {moved / full:.2%} of a full reflection, more "
+                "than noise does: a loose contact."
             )
             return Suspicion(hookup, reason, 0.95, "loose")
     return None
