@@ -14,7 +14,7 @@ import benchrun
 from benchrun.cli.main import program
 
 COMMANDS = {
-    (): ("audit", "bench", "check", "keys", "rehearse", "resume", "run", "sequences", "--version", "Exit codes: 0 pass"),
+    (): ("audit", "bench", "check", "keys", "overnight", "rehearse", "resume", "run", "sequences", "--version", "Exit codes: 0 pass"),
     ("audit",): ("RECORD...",),
     ("bench",): ("FILE", "--simulated"),
     ("check",): ("FILES", "--schema", "sequence|bench|kit|mask"),
@@ -24,7 +24,8 @@ COMMANDS = {
     ("keys", "list"): (),
     ("keys", "distrust"): ("KEY_ID",),
     ("keys", "export"): ("NAME",),
-    ("rehearse",): ("SEQUENCE", "--bench", "--unit", "--seed", "--fault", "--operator", "--records", "--json", "--unattended"),
+    ("overnight",): ("FILE", "--operator", "--key", "--records", "--afresh"),
+    ("rehearse",): ("SEQUENCE", "--all", "--bench", "--unit", "--seed", "--fault", "--operator", "--records", "--json", "--unattended"),
     ("resume",): ("RECORDS", "--close", "--key", "--json", "--unattended"),
     ("run",): ("SEQUENCE", "--bench", "--unit", "--batch", "--key", "--operator", "--records", "--json", "--unattended"),
     ("sequences",): (),
