@@ -5,18 +5,19 @@ from __future__ import annotations
 import contextlib
 import math
 from collections.abc import Mapping
-from typing import Any, Protocol
+from typing import Any
 
 import numpy as np
 
 from sim_instruments.instruments.front import add_commands
 from sim_instruments.instruments.manners import Limits, Manners
+from sim_instruments.instruments.readings import Readings
 from sim_instruments.scpi.errors import ScpiError
 from sim_instruments.scpi.instrument import Instrument
 from sim_instruments.waves import Matrix, Real
 from sim_instruments.world import World
 
-__all__ = ["Analyzer", "Readings"]
+__all__ = ["Analyzer"]
 
 _SETTLE_S = 100e-6
 _OVERLOAD_DBM = 12.0
@@ -24,49 +25,6 @@ _INSTANT_S = 1e-9
 """Times nearer than this are the same."""
 _SWEEPING, _WAITING, _OVERLOADED, _COLD = 3, 5, 3, 4
 """Bits of the OPERation register, and of QUEStionable (power, temperature)."""
-
-
-class Readings(Protocol):
-    """Where an analyzer's readings come from."""
-
-    def read(
-        self, f_hz: Real, bandwidth_hz: float, power_dbm: float | Real, averages: int, source_on: bool
-    ) -> Matrix:
-        """Raw readings ``(f, 2, 2)`` of what is connected now.
-
-        Parameters
-        ----------
-        f_hz
-            ``(f,)``.
-        bandwidth_hz
-            Of the IF filter.
-        power_dbm
-            Of the source, one or ``(f,)``.
-        averages
-            Sweeps averaged.
-        source_on
-            Whether it sends.
-
-        Raises
-        ------
-        ScpiError
-            If it cannot be read.
-        """
-        ...
-
-    def switch_terms(self, f_hz: Real) -> Matrix:
-        """What the idle port reflects, with port 1 and with port 2 driven, ``(f, 2)``.
-
-        Raises
-        ------
-        ScpiError
-            -241 where nothing reads it.
-        """
-        ...
-
-    def is_cold(self) -> bool:
-        """Whether readings still move because it was switched on not long ago."""
-        ...
 
 
 class Analyzer(Instrument):
