@@ -22,6 +22,7 @@ _COMMANDS = {
     "bench": ("benchrun.cli.bench", "Ask each instrument of a bench who it is and how it feels."),
     "check": ("benchrun.cli.check", "Read sequences, benches, kits and masks, and report every problem."),
     "keys": ("benchrun.cli.keys", "Make, list and trust the keys that sign records."),
+    "match": ("benchrun.cli.match", "Match an impedance with parts that can be bought."),
     "overnight": ("benchrun.cli.overnight", "Run many sequences by themselves, benches side by side."),
     "rehearse": ("benchrun.cli.rehearse", "Run a sequence against the simulated bench."),
     "resume": ("benchrun.cli.resume", "Take up runs that broke off, or close them as invalid records."),

@@ -14,7 +14,7 @@ import benchrun
 from benchrun.cli.main import program
 
 COMMANDS = {
-    (): ("audit", "bench", "check", "keys", "overnight", "rehearse", "resume", "run", "sequences", "--version", "Exit codes: 0 pass"),
+    (): ("audit", "bench", "check", "keys", "match", "overnight", "rehearse", "resume", "run", "sequences", "--version", "Exit codes: 0 pass"),
     ("audit",): ("RECORD...",),
     ("bench",): ("FILE", "--simulated"),
     ("check",): ("FILES", "--schema", "sequence|bench|kit|mask"),
@@ -24,6 +24,7 @@ COMMANDS = {
     ("keys", "list"): (),
     ("keys", "distrust"): ("KEY_ID",),
     ("keys", "export"): ("NAME",),
+    ("match",): ("RECORD|FILE", "--load", "--at", "--port", "--z0", "--vswr", "--coils", "--capacitors", "--q", "--json"),
     ("overnight",): ("FILE", "--operator", "--key", "--records", "--afresh"),
     ("rehearse",): ("SEQUENCE", "--all", "--bench", "--unit", "--seed", "--fault", "--operator", "--records", "--json", "--unattended"),
     ("resume",): ("RECORDS", "--close", "--key", "--json", "--unattended"),

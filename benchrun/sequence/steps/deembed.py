@@ -19,13 +19,24 @@ from benchrun.rf.deembedding.plane import Extension
 from benchrun.sequence.fields import Decibel, Delay, FileModel, Frequency, Name, trouble
 from benchrun.sequence.steps.base import StepModel
 
-__all__ = ["Adapter", "DeEmbed", "Dummies", "Shift", "TwoThru"]
+__all__ = ["Adapter", "DeEmbed", "Dummies", "Shift", "TwoThru", "impedance_of", "ohm_text"]
 
 _COMPLEX = re.compile(r"\s*([-+0-9.eE]+?)\s*([-+])\s*([0-9.eE]+)j\s*(ohm|Ω)\s*")
 
 
-def _ohm(value: object) -> complex:
-    """One impedance: ``75 ohm`` or ``73 + 42j ohm``."""
+def impedance_of(value: object) -> complex:
+    """Read one impedance: ``75 ohm`` or ``73 + 42j ohm``.
+
+    Raises
+    ------
+    ValueError
+        If it is none, or has no resistance above zero.
+
+    Examples
+    --------
+    >>> impedance_of("73 - 42.5j ohm")
+    (73-42.5j)
+    """
     if isinstance(value, complex):
         return value
     if isinstance(value, str) and (match := _COMPLEX.fullmatch(value)):
@@ -36,7 +47,7 @@ def _ohm(value: object) -> complex:
     else:
         found = complex(parse(value, Dimension.IMPEDANCE), 0.0)
     if not found.real > 0:
-        raise ValueError(f"{value!r} is no reference impedance; its resistance must be above 0 ohm")
+        raise ValueError(f"{value!r} is no such impedance; its resistance must be above 0 ohm")
     return found
 
 
@@ -46,8 +57,8 @@ def _ports_ohm(value: object) -> object:
             raise ValueError(
                 f"names {len(value)} impedances; write one for both ports, or one for each of two"
             )
-        return (_ohm(value[0]), _ohm(value[1]))
-    return (_ohm(value), _ohm(value))
+        return (impedance_of(value[0]), impedance_of(value[1]))
+    return (impedance_of(value), impedance_of(value))
 
 
 _ONE_OHM: dict[str, Any] = {"type": "string", "examples": ["75 ohm", "73 + 42.5j ohm"]}
