@@ -48,6 +48,8 @@ from sim_instruments import bench as simulated
 from sim_instruments.bench import load_bench
 
 WORKSHOP = Path(simulated.__file__).parent / "benches" / "workshop.yaml"
+LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+DUMPER: Any = getattr(yaml, "CSafeDumper", yaml.SafeDumper)
 ANALYZER = "GPIB0::16::INSTR"
 S21 = {"trace": "S21"}
 BAND = {"over": (160e6, 175e6)}
@@ -115,8 +117,9 @@ def another_bench(seed: int) -> tuple[dict[str, Any], dict[str, Any], dict[str, 
     def factor() -> float:
         return float(np.exp(chance.uniform(np.log(0.5), np.log(2.0))))
 
-    spec = yaml.safe_load(WORKSHOP.read_text(encoding="utf-8"))
-    kit = yaml.safe_load((installed_sequences() / "kits" / "n50-workshop.yaml").read_text(encoding="utf-8"))
+    spec = yaml.load(WORKSHOP.read_text(encoding="utf-8"), Loader=LOADER)
+    kit_path = installed_sequences() / "kits" / "n50-workshop.yaml"
+    kit = yaml.load(kit_path.read_text(encoding="utf-8"), Loader=LOADER)
     sizes = {
         "L0": 1e-12 * factor(), "C0": 1e-15 * factor(), "delay": 0.1e-12 * factor(),
         "resistance": 0.25 * factor(), "inductance": 3e-12 * factor(), "jig delay": 0.05e-12 * factor(),
@@ -195,9 +198,9 @@ def measure(seed: int, which: str, grid: Any = None) -> tuple[Trail, Sources, Tw
     spec, kit_spec, sizes = another_bench(seed)
     with tempfile.TemporaryDirectory() as folder:
         path = Path(folder) / "bench.yaml"
-        path.write_text(yaml.safe_dump(spec), encoding="utf-8")
+        path.write_text(yaml.dump(spec, Dumper=DUMPER), encoding="utf-8")
         bench = load_bench(str(path), seed)
-    kit = load_model(yaml.safe_dump(kit_spec).encode(), "kit", KitFile).model.build()
+    kit = load_model(yaml.dump(kit_spec, Dumper=DUMPER).encode(), "kit", KitFile).model.build()
     analyzer, world, times = bench.instruments[ANALYZER], bench.world, list[float]()
 
     def read(hookup: Hookup) -> TwoPort:
