@@ -50,7 +50,7 @@ class Row:
     told: collections.Counter[str] = dataclasses.field(default_factory=collections.Counter)
     idle: int = 0
     quiet: collections.Counter[str] = dataclasses.field(default_factory=collections.Counter)
-    """Sequences in which it struck and a good unit passed with nothing said: harmless there, or not noticed."""
+    """Sequences in which it struck and a good unit passed with nothing said: harmless, or not noticed."""
 
     def add(self, other: Row) -> None:
         """Count in what it did elsewhere."""
