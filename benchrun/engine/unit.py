@@ -356,10 +356,9 @@ class UnitRun:
         return self.outcome(folder)
 
     def _only_journal(self, trouble: str) -> Outcome:
-        if self.journal.failure is not None:
-            return self.outcome(None, trouble)
         self.journal.needed = True
-        text = f"{trouble} All readings are in the journal; when that is mended: benchrun resume"
+        what = "All readings are" if self.journal.failure is None else "What had been written down is"
+        text = f"{trouble} {what} in the journal; when that is mended: benchrun resume"
         return self.outcome(None, f"{text} {self.job.records}")
 
     def settle(self) -> None:

@@ -11,6 +11,7 @@ Usage: python tests/benchmarks/kill_study.py [RUNS]
 from __future__ import annotations
 
 import collections
+import contextlib
 import datetime
 import json
 import os
@@ -93,18 +94,15 @@ class Lasting:
             threading.Thread(target=self._attend, args=(line,), daemon=True).start()
 
     def _attend(self, line: socket.socket) -> None:
-        with line, line.makefile("rw") as talk:
+        with contextlib.suppress(OSError), line, line.makefile("rw") as talk:  # whoever asked was killed
             for request in talk:
                 asked = json.loads(request)
                 if "offer" in asked:
                     self.bench.world.offer(asked["offer"])
                 else:
                     self.bench.world.connect(asked["connect"])
-                try:
-                    talk.write("done\n")
-                    talk.flush()
-                except OSError:
-                    return
+                talk.write("done\n")
+                talk.flush()
 
     def close(self) -> None:
         """Gone."""
