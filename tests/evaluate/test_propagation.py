@@ -8,17 +8,26 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from benchrun.errors import InputError
+from benchrun.evaluate.chain import apply
 from benchrun.evaluate.propagation.influences import influences
 from benchrun.evaluate.propagation.kernel import Kernel
 from benchrun.evaluate.propagation.propagate import propagate
 from benchrun.evaluate.propagation.quantities import Quantity, near
 from benchrun.evaluate.propagation.trail import Basis, Trail, corrected, freed
+from benchrun.evaluate.readings import decode
+from benchrun.evaluate.state import State
 from benchrun.hookup import Connection, Hookup
+from benchrun.paths import installed_sequences
+from benchrun.record.keys import KeyStore
+from benchrun.record.verify import verify
 from benchrun.rf.calibration import METHODS, define
 from benchrun.rf.figures import FIGURES
 from benchrun.rf.kit import Kit, Offset, Standard
 from benchrun.rf.terms import Direction, TwelveTerms
 from benchrun.rf.twoport import TwoPort
+from benchrun.sequence.bench import Bench
+from benchrun.sequence.files import load_model
 from benchrun.uncertainty.montecarlo import Effort
 from benchrun.uncertainty.sources import Sources
 
@@ -224,8 +233,6 @@ uncertainty:
 @pytest.fixture
 def sourced(tmp_path: Path) -> str:
     """The workshop's bench with sources in place of residual terms."""
-    from benchrun.paths import installed_sequences
-
     text = (installed_sequences() / "benches" / "workshop.yaml").read_text()
     path = tmp_path / "sourced.yaml"
     path.write_text(text[: text.index("uncertainty:")] + SOURCES)
@@ -240,3 +247,63 @@ def test_a_run_takes_its_uncertainty_from_the_sources_and_an_audit_finds_it_agai
         assert 0 < figure["uncertainty"] < 2.0, figure
     audited = w.audit(w.records[-1])
     assert audited.code == 0, audited.err
+
+
+def test_a_provisional_judgement_comes_from_first_order_alone(workplace, sourced):
+    w = workplace(bench=sourced)
+    w.run()
+    kept: list[State] = []
+    procedure, readings = w.job.plan.procedure, {}
+    record = verify(w.records[-1], KeyStore()).record
+    for entry in record.payload.readings:
+        readings.setdefault(entry.step, {})[entry.hookup] = decode(record.content(entry.file), entry.file)
+    for provisional in (True, False):
+        state = State(procedure, provisional=provisional)
+        for step in procedure.sequence.steps:
+            apply(step, state, readings.get(step.name, {}))
+        kept.append(state)
+    early, final = kept
+    assert not early.propagated
+    assert set(final.propagated) == {"judgement"}
+    for before, after in zip(early.figures, final.figures, strict=True):
+        assert before.value == after.value
+        assert before.uncertainty == pytest.approx(after.uncertainty, rel=0.35)
+
+
+def test_noise_that_decides_an_extreme_is_told():
+    kind, parameters = FIGURES["ripple"], {"over": (100e6, 1e9), "trace": "S21"}
+    flat = TwoPort(*(np.full(len(F_HZ), x, np.complex128) for x in (0.0, 0.5, 0.5, 0.0)))
+    noise = (0.0, 1e-3)
+    seen = replace(trail(noise=noise), unit=TERMS.embed(flat))
+    chance = np.random.default_rng(5)
+    read = seen.unit.map(lambda p: p * (1 + 7e-4 * chance.standard_normal(len(p))))
+    value = float(kind.measure(F_HZ, corrected(seen.terms, read, 1), "at most", **parameters).value)
+    one = Quantity("ripple", kind, "at most", parameters, value, near(F_HZ, kind, parameters))
+    loud = propagate(replace(seen, unit=read), Sources(), [one], Effort(trials=300), seed=2).figures[0]
+    assert loud.noise_bias > 0
+    assert loud.noisy
+    assert loud.departure() > value / 2, "the truth, no ripple at all, lies within U"
+    calm = trail(noise=(0.0, 1e-6))
+    at = Quantity(
+        "loss", FIGURES["insertion loss"], "at most", {"at": 6e8, "trace": "S21"}, 4.4, slice(0, 30)
+    )
+    assert not propagate(calm, CONNECTOR, [at], Effort(trials=300), seed=2).figures[0].noisy
+
+
+@pytest.mark.parametrize(
+    ("sources", "said"),
+    [
+        ("{weather: {wind: 3 dB}}", "'weather' is no source; known are noise"),
+        ("{noise: 3 dB}", "noise: '3 dB' is no list of sizes; it takes floor, trace"),
+        ("{noise: {floor: 3 dB}}", "'3 dB' is not in dBm"),
+        ("{connector: {repeatability: 60 dB, distribution: bell}}", "'bell' is no distribution"),
+    ],
+)
+def test_a_bench_file_that_says_nonsense_about_sources_is_refused_at_its_line(sources, said):
+    text = (installed_sequences() / "benches" / "workshop.yaml").read_text()
+    text = f"{text[: text.index('uncertainty:')]}uncertainty:\n  sources: {sources}\n"
+    with pytest.raises(InputError) as caught:
+        load_model(text.encode(), "bench.yaml", Bench)
+    (problem,) = caught.value.problems
+    assert said in problem.message
+    assert problem.line == text.count("\n")

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
+from dataclasses import replace
 from typing import Any, TypeAlias
 
 import numpy as np
@@ -28,6 +29,8 @@ from benchrun.sequence.steps.judge import FigureLimit, FigureText, MaskLimit
 from benchrun.uncertainty.decision import COVERAGE_FACTOR, Rule
 
 __all__ = ["JudgeArithmetic"]
+
+_NOISY = "decided by noise: use a narrower bandwidth or more averages"
 
 Spreads: TypeAlias = Mapping[tuple[int, str], FigureSpread]
 """By position of the limit in its step, and side."""
@@ -104,7 +107,10 @@ def _judge_figure(
                 up, down = (up, down) if kind.sense > 0 else (down, up)
             else:
                 up = down = COVERAGE_FACTOR * float(combine(moved - value, network.systematic))
-        yield told(name, value, unit, bound, side, float(found.at_hz), rule, up, down)
+        figure = told(name, value, unit, bound, side, float(found.at_hz), rule, up, down)
+        if side in spreads and spreads[side].noisy and not figure.remark:
+            figure = replace(figure, remark=_NOISY)
+        yield figure
 
 
 def _in_impedance(limit: FigureText, network: Network) -> dict[str, Any]:
