@@ -18,6 +18,7 @@ UNITS = {
     "driver-amplifier": (["DA-0001"], ["DA-8001"], ["DA-9001"]),
     "driver-amplifier-drive": (["DA-0001"], ["DA-8001"], ["DA-9001", "DA-9002"]),
     "harmonic-filter": (["HF-0001", "HF-0002"], ["HF-8001"], ["HF-9001", "HF-9002", "HF-9003", "HF-9004"]),
+    "harmonic-filter-design": (["HF-0001", "HF-0002"], [], ["HF-8001", "HF-9001", "HF-9002", "HF-9003"]),
     "jumper-cable": (["JC-0001", "JC-0002"], ["JC-8001"], ["JC-9001", "JC-9002", "JC-9003"]),
     "pad-10db": (["PD-0001", "PD-0002"], ["PD-8001"], ["PD-9001", "PD-9002"]),
     "preselector": (["PS-0001", "PS-0002"], ["PS-8001"], ["PS-9001", "PS-9002"]),

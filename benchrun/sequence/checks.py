@@ -19,7 +19,7 @@ from benchrun.sequence.kits import check_kits
 from benchrun.sequence.loading import Document
 from benchrun.sequence.models import Sequence
 from benchrun.sequence.resolve import grid_of, outside, source_of, span, step_paths
-from benchrun.sequence.steps import Calibrate, DeEmbed, Judge, StepModel, Tone
+from benchrun.sequence.steps import Calibrate, DeEmbed, Expect, Judge, StepModel, Tone
 from benchrun.sequence.steps.judge import FigureLimit, MaskLimit
 
 __all__ = ["check_bench", "check_kits", "check_masks", "check_sequence", "check_serial"]
@@ -86,7 +86,7 @@ def _names(loaded: Loaded[Sequence]) -> Iterator[Problem]:
             )
         taken.setdefault(step.name, index)
         standing[step.leaves, step.name] = index
-    if not any(isinstance(step, Judge) for step in sequence.steps):
+    if not any(isinstance(step, Judge | Expect) for step in sequence.steps):
         yield document.problem(
             "has no step that judges, so nothing could ever be concluded",
             ("steps",),
@@ -97,14 +97,34 @@ def _names(loaded: Loaded[Sequence]) -> Iterator[Problem]:
 
 def _bands(loaded: Loaded[Sequence]) -> Iterator[Problem]:
     for step, path in step_paths(loaded):
-        if not isinstance(step, Judge):
+        if not isinstance(step, Judge | Expect):
             continue
         grid = grid_of(loaded.model, step.from_)
         if grid is None:
             continue
+        if isinstance(step, Expect):
+            yield from _expected_band(loaded.document, step, path, grid)
+            continue
         for i, limit in enumerate(step.limits):
             if isinstance(limit, FigureLimit):
                 yield from _figure_band(loaded, limit, (*path, "limits", i), grid)
+
+
+def _expected_band(
+    document: Document, step: Expect, path: tuple[object, ...], grid: FloatArray
+) -> Iterator[Problem]:
+    low, high = step.over
+    if outside(low, high, grid):
+        swept = span(grid[0], grid[-1])
+        yield document.problem(
+            f"the design is expected over {span(low, high)}, but the sweep covers {swept}",
+            (*path, "over"),
+            "Widen the sweep or narrow the band.",
+        )
+    elif np.count_nonzero((grid >= low) & (grid <= high)) < 2:
+        yield document.problem(
+            f"the sweep has fewer than two points in {span(low, high)}", (*path, "over"), "Use more points."
+        )
 
 
 def _figure_band(
@@ -165,6 +185,8 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
             yield document.problem(
                 f"{step.from_} is a tone, which has no S-parameters to take a fixture out of", (*path, "from")
             )
+        if isinstance(step, Expect):
+            yield from _expectable(loaded, step, path)
         if isinstance(step, Judge):
             source = source_of(loaded.model, step.from_)
             yield from _domains(document, step, path, source)
@@ -179,6 +201,15 @@ def _ports(loaded: Loaded[Sequence]) -> Iterator[Problem]:
                 continue
             for i, limit in enumerate(step.limits):
                 yield from _one_port(document, limit, (*path, "limits", i), has, one)
+
+
+def _expectable(loaded: Loaded[Sequence], step: Expect, path: tuple[object, ...]) -> Iterator[Problem]:
+    """A design is of S-parameters between its own terminations."""
+    document, source = loaded.document, source_of(loaded.model, step.from_)
+    if isinstance(source, Tone):
+        yield document.problem(f"{step.from_} is a tone, which no ladder predicts", (*path, "from"))
+    elif loaded.model.unit.ports == 1:
+        yield document.problem("a ladder has two ports, but the unit has one", path)
 
 
 def _options(document: Document, step: Calibrate, path: tuple[object, ...]) -> Iterator[Problem]:

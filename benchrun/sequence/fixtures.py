@@ -14,7 +14,7 @@ from benchrun.rf.twoport import FloatArray
 from benchrun.sequence.files import Loaded
 from benchrun.sequence.models import Sequence
 from benchrun.sequence.resolve import grid_of, ohm_of, outside, span, step_paths
-from benchrun.sequence.steps import DeEmbed, Judge
+from benchrun.sequence.steps import DeEmbed, Expect, Judge
 from benchrun.sequence.steps.deembed import ohm_text
 from benchrun.sequence.steps.judge import FigureLimit
 
@@ -44,6 +44,8 @@ def check_fixtures(
     for step, path in step_paths(loaded):
         if isinstance(step, Judge):
             problems += _judged(loaded, step, path, z0_ohm)
+        if isinstance(step, Expect):
+            problems += _expected(loaded, step, path, z0_ohm)
         if not isinstance(step, DeEmbed):
             continue
         grid, ohms = grid_of(loaded.model, step.from_), ohm_of(loaded.model, step.from_, z0_ohm)
@@ -105,6 +107,22 @@ def _judged(
                     (*path, "limits", i, "figure"),
                     "Judge it before the step that renormalises.",
                 )
+
+
+def _expected(
+    loaded: Loaded[Sequence], step: Expect, path: tuple[object, ...], z0_ohm: float
+) -> Iterator[Problem]:
+    """A design is compared between its own terminations."""
+    ohms = ohm_of(loaded.model, step.from_, z0_ohm)
+    for key, wanted, has in zip(
+        ("source", "load"), (step.design.source, step.design.load), ohms, strict=True
+    ):
+        if abs(wanted - has) > 1e-9 * wanted:
+            yield loaded.document.problem(
+                f"the design has a {key} of {wanted:g} ohm, but {step.from_} is given for {ohm_text(has)}",
+                (*path, "design", key),
+                "Renormalise the result first.",
+            )
 
 
 def _one(

@@ -8,6 +8,7 @@ from typing import Any
 from benchrun.engine.steps.base import AtWork, Execution
 from benchrun.engine.steps.calibrate import CalibrateExecution
 from benchrun.engine.steps.deembed import DeEmbedExecution
+from benchrun.engine.steps.expect import ExpectExecution
 from benchrun.engine.steps.judge import JudgeExecution
 from benchrun.engine.steps.sweep import SweepExecution
 from benchrun.engine.steps.tone import ToneExecution
@@ -20,5 +21,6 @@ EXECUTIONS: Mapping[str, Execution[Any]] = {
     "de-embed": DeEmbedExecution(),
     "tone": ToneExecution(),
     "judge": JudgeExecution(),
+    "expect": ExpectExecution(),
 }
 """By the kind of the step, as written in a sequence."""

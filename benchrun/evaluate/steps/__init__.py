@@ -8,6 +8,7 @@ from typing import Any
 from benchrun.evaluate.steps.base import Arithmetic
 from benchrun.evaluate.steps.calibrate import CalibrateArithmetic
 from benchrun.evaluate.steps.deembed import DeEmbedArithmetic
+from benchrun.evaluate.steps.expect import ExpectArithmetic
 from benchrun.evaluate.steps.judge import JudgeArithmetic
 from benchrun.evaluate.steps.sweep import SweepArithmetic
 from benchrun.evaluate.steps.tone import ToneArithmetic
@@ -20,5 +21,6 @@ ARITHMETIC: Mapping[str, Arithmetic[Any]] = {
     "de-embed": DeEmbedArithmetic(),
     "tone": ToneArithmetic(),
     "judge": JudgeArithmetic(),
+    "expect": ExpectArithmetic(),
 }
 """By the kind of the step, as written in a sequence."""
