@@ -284,9 +284,9 @@ def test_noise_that_decides_an_extreme_is_told():
     assert loud.noisy
     assert loud.departure() > value / 2, "the truth, no ripple at all, lies within U"
     calm = trail(noise=(0.0, 1e-6))
-    at = Quantity(
-        "loss", FIGURES["insertion loss"], "at most", {"at": 6e8, "trace": "S21"}, 4.4, slice(0, 30)
-    )
+    kind, parameters = FIGURES["insertion loss"], {"at": 600e6, "trace": "S21"}
+    value = float(kind.measure(F_HZ, UNIT, "at most", **parameters).value)
+    at = Quantity("loss", kind, "at most", parameters, value, near(F_HZ, kind, parameters))
     assert not propagate(calm, CONNECTOR, [at], Effort(trials=300), seed=2).figures[0].noisy
 
 

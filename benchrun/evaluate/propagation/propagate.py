@@ -28,8 +28,8 @@ from benchrun.uncertainty.sources import Sources
 
 __all__ = ["FigureSpread", "Propagated", "propagate"]
 
-_NOISE_TRIALS = 100
-"""Draws of noise alone in a budget: its share is then known to one part in fourteen."""
+_NOISE_TRIALS = 300
+"""Draws of noise alone in a budget: its share is then known to one part in twelve (``sqrt(2 / n)``)."""
 _DOUBLING = 1.0 / (math.sqrt(2.0) - 1.0)
 """Noise lifts the extreme of a flat trace in proportion to its size: by c, and twice as much variance by
 ``sqrt(2) c``. The trials show the difference."""
