@@ -98,6 +98,7 @@ class Recall:
             for number, _ in self._steps:
                 if number not in self._past.finished:
                     self._unit.kept.extend(r.reading(self._unit.emit.start_s) for r in self._past.of(number))
+            self.goes_on()
         if self._story.closing:
             self._close_bench()
             return Ending(Conclusion.INVALID, self._story.closing, "Run again from the start.")

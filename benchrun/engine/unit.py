@@ -119,6 +119,7 @@ class UnitRun:
             self._say_end()
         self.wall_s = time.perf_counter() - began
         self.bench_s = self.emit.seconds()
+        self.top.transcript.exchanges.clear()  # said and kept: a batch of thousands must not pile it up
         self.repeats = tuple(self.top.repeats[self.repeated :])
         return self.outcome()
 
@@ -248,6 +249,8 @@ class UnitRun:
             if past is not None:
                 past.goes_on()
             self._step(number, step, work)
+        if past is not None:  # only the record was missing
+            past.goes_on()
 
     def _step(self, number: int, step: StepModel, work: AtWork) -> None:
         execution, count = EXECUTIONS[step.kind], len(self.kept.readings)
@@ -365,6 +368,9 @@ class UnitRun:
         """Tell of the record, in the thread that started the run."""
         if self._written is not None:
             self.emit(self._written)
+        # Only rings of references hold the readings now; without them they go at once, not some time.
+        self.kept = Kept()
+        self.past = None
 
 
 class _Hands:
