@@ -22,7 +22,7 @@ from benchrun.instruments.spectrum import SpectrumAnalyzer
 from benchrun.instruments.supply import Supply
 from benchrun.sequence.steps import StepModel
 
-__all__ = ["AtWork", "Execution", "carry_out"]
+__all__ = ["AtWork", "Execution", "carry_out", "read"]
 
 S = TypeVar("S", bound=StepModel, contravariant=True)
 
@@ -45,6 +45,9 @@ class AtWork:
         Says what happens.
     standing
         What is connected now; hands are asked only for a change.
+    twice
+        Sweep every connection of a calibration a second time, and doubt one that does not read the same: a
+        loose load shows in no other way.
     """
 
     procedure: Procedure
@@ -58,6 +61,7 @@ class AtWork:
     generator: SignalGenerator | None = None
     spectrum: SpectrumAnalyzer | None = None
     supply: Supply | None = None
+    twice: bool = False
 
     def connect(self, hookup: Hookup) -> None:
         """Have a connection made, if it does not stand; a unit is fed only while it is connected.
@@ -120,7 +124,27 @@ class Execution(Protocol[S]):
         ...
 
 
-def carry_out(step: StepModel, work: AtWork, last: Callable[[StepModel, AtWork], None] | None = None) -> None:
+def read(step: StepModel, work: AtWork, hookup: Hookup) -> None:
+    """Have a hook-up made if it does not stand, sweep it as the analyzer is set up, and keep the reading.
+
+    A reading kept before for the same hook-up stays in the record, and the new one takes its place.
+    """
+    assert work.analyzer is not None  # it was set up
+    setup = work.procedure.sequence.sweep_of(step)
+    work.connect(hookup)
+    if setup.settle:
+        work.clock.wait(setup.settle)
+    swept = work.analyzer.sweep()
+    reading = work.kept.add(Reading.of(step.name, hookup.text, swept.f_hz, swept.raw, work.clock.seconds()))
+    work.emit(ReadingTaken(step=step.name, hookup=hookup.text, points=len(swept.f_hz), sha256=reading.sha256))
+
+
+def carry_out(
+    step: StepModel,
+    work: AtWork,
+    last: Callable[[StepModel, AtWork], None] | None = None,
+    after: Callable[[Hookup], None] | None = None,
+) -> None:
     """Read what a step needs read, then do its arithmetic: all that most kinds need.
 
     Parameters
@@ -128,7 +152,9 @@ def carry_out(step: StepModel, work: AtWork, last: Callable[[StepModel, AtWork],
     step, work
         The step, and what it may use.
     last
-        Called after the last reading, while everything is still connected.
+        Called after the last reading, while its hook-up still stands.
+    after
+        Called after each reading; it may have others made again.
     """
     needed, analyzer = hookups(step, work.procedure), work.analyzer
     if needed:
@@ -136,22 +162,15 @@ def carry_out(step: StepModel, work: AtWork, last: Callable[[StepModel, AtWork],
             raise RuntimeError("a sweep was planned for a bench without network analyzer")
         setup = work.procedure.sequence.sweep_of(step)
         spacing = "list" if setup.at is not None else setup.spacing
-        settings = SweepSettings(setup.grid(), spacing, setup.bandwidth, setup.power, setup.averages)
-        analyzer.set_up(settings)
+        analyzer.set_up(SweepSettings(setup.grid(), spacing, setup.bandwidth, setup.power, setup.averages))
         for hookup in needed:
-            work.connect(hookup)
-            if setup.settle:
-                work.clock.wait(setup.settle)
-            raw = analyzer.sweep().raw
-            reading = work.kept.add(
-                Reading.of(step.name, hookup.text, settings.grid_hz, raw, work.clock.seconds())
-            )
-            work.emit(
-                ReadingTaken(
-                    step=step.name, hookup=hookup.text, points=len(settings.grid_hz), sha256=reading.sha256
-                )
-            )
+            read(step, work, hookup)
+            if after is not None:
+                after(hookup)
     if last is not None:
+        if analyzer is not None and needed and work.standing != needed[-1]:
+            work.connect(needed[-1])  # something before it was made again
+            analyzer.sweep()
         last(step, work)
     apply(step, work.state, work.kept.of(step.name))
     if step.name in work.state.agreements:

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import functools
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 
 import numpy as np
 
+from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.network import Data
 from benchrun.evaluate.procedure import Procedure
 from benchrun.evaluate.propagation.trail import Basis
@@ -14,12 +15,14 @@ from benchrun.evaluate.readings import Raw, two_ports
 from benchrun.evaluate.state import Calibration, State, agree
 from benchrun.hookup import Hookup
 from benchrun.rf.calibration import define
+from benchrun.rf.calibration.method import Readings
 from benchrun.rf.calibration.one_path import turned_round
+from benchrun.rf.calibration.suspicion import SURE, Suspicion, suspect
 from benchrun.rf.calibration.switch_terms import SWITCH_READING
 from benchrun.rf.twoport import ComplexArray, TwoPort
 from benchrun.sequence.steps import Calibrate
 
-__all__ = ["NOISE_DRAWS", "CalibrateArithmetic"]
+__all__ = ["ADVICE", "NOISE_DRAWS", "CalibrateArithmetic", "refuse_suspects", "sure_doubts"]
 
 NOISE_DRAWS = 20
 """Draws of noise, each of four complex readings.
@@ -27,6 +30,13 @@ NOISE_DRAWS = 20
 Their share of an uncertainty, small beside the systematic one after any sensible choice of bandwidth, is then
 known to one part in six (1 / sqrt(2 n)).
 """
+
+
+ADVICE = (
+    "See that the right standard hangs on the right port, clean and tight, and its cable whole; then "
+    "calibrate again."
+)
+"""What to do about a connection that stays suspicious."""
 
 
 class CalibrateArithmetic:
@@ -43,6 +53,7 @@ class CalibrateArithmetic:
         f_hz, kit = procedure.sequence.sweeps[step.sweep].grid(), procedure.kits[step.kit]
         options = step.options
         definitions = define(kit, method.takes(options), f_hz)
+        refuse_suspects(suspect(definitions, swept, f_hz))
         terms = method.solve(ports, definitions, swept, step.isolation, options)
         examiner = method.examiner(f_hz, ports, kit, swept, step.isolation, options)
         raw = swept[self.hookups(step, procedure)[-1].text]  # the last one joins the ports, or is the load
@@ -61,6 +72,26 @@ class CalibrateArithmetic:
             made = procedure.sources.noise(setup.bandwidth, setup.power, setup.averages)
             basis = Basis(method, ports, kit, hookups, swept, made, step.isolation, options)
         state.calibrations[step.name] = Calibration(f_hz, ports, terms, examiner, noise, kit.z0_ohm, basis)
+
+
+def sure_doubts(step: Calibrate, procedure: Procedure, readings: Readings) -> list[Suspicion]:
+    """Connections that look wrong in the readings so far, the surest first; hints are left out."""
+    f_hz = procedure.sequence.sweeps[step.sweep].grid()
+    definitions = define(procedure.kits[step.kit], step.how.takes(step.options), f_hz)
+    return [doubt for doubt in suspect(definitions, readings, f_hz) if doubt.confidence > SURE]
+
+
+def refuse_suspects(doubts: Iterable[Suspicion]) -> None:
+    """No calibration is made of readings that look wrong.
+
+    Raises
+    ------
+    InvalidMeasurement
+        For the surest of them, naming its connection.
+    """
+    for doubt in doubts:
+        if doubt.confidence > SURE:
+            raise InvalidMeasurement(f"{doubt.hookup}: {doubt.reason}", ADVICE)
 
 
 @functools.cache

@@ -50,6 +50,8 @@ def suspect(definitions: Definitions, readings: Readings, f_hz: FloatArray) -> l
     list of Suspicion
         The surest first; at most one a hook-up. Empty if all looks well.
     """
+    if all(_silent(two) for two in readings.values()):
+        return []  # nothing reaches the receivers at all: no connection is to blame for that
     found: list[Suspicion] = []
     good: dict[str, TwoPort] = {}
     for text, two in readings.items():
@@ -138,6 +140,10 @@ def _moved(difference: ComplexArray) -> float:
     common = float(np.abs(np.mean(difference[1:] * np.conj(difference[:-1]))))
     scatter = float(np.mean(power)) / np.sqrt(len(difference) - 1)
     return float(np.sqrt(max(common - 3.0 * scatter, 0.0)))
+
+
+def _silent(two: TwoPort) -> bool:
+    return all(float(np.max(np.abs(p), initial=0.0)) < 1e-9 for p in two.planes)
 
 
 def _single(text: str) -> re.Match[str] | None:
