@@ -19,7 +19,7 @@ from benchrun.sequence.files import Loaded
 from benchrun.sequence.models import Sequence
 from sim_instruments.bench import BadBench, SimulatedBench, load_bench
 from sim_instruments.doors.visa import simulated_visa
-from sim_instruments.faults import FAULTS, inject
+from sim_instruments.faults import FAULTS, inject, is_fault
 from sim_instruments.world import NoSuchItem, World
 
 __all__ = ["Rehearsal", "SimulatedHands", "prepare_rehearsal"]
@@ -124,7 +124,7 @@ def prepare_rehearsal(bench: Loaded[Bench], seed: int, faults: Iterable[str] = (
 def _with_fault(bench: SimulatedBench, fault: str, seed: int) -> SimulatedBench:
     name, _, after = fault.partition("@")
     name = name.strip()
-    if name not in FAULTS:
+    if not is_fault(name):
         close = difflib.get_close_matches(name, FAULTS, 1, 0.5)
         hint = f"did you mean {close[0]!r}?" if close else f"known are {', '.join(FAULTS)}"
         raise InputError(f"there is no fault {name!r}; {hint}")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from benchrun.errors import InvalidMeasurement
 from benchrun.instruments.safety import switched_off
 from benchrun.instruments.scalar_dialects import GeneratorDialect
 from benchrun.scpi.session import Session
@@ -43,6 +44,21 @@ class SignalGenerator:
         values = {"frequency_hz": repr(float(frequency_hz)), "power_dbm": repr(float(power_dbm))}
         self.session.set(*(m.format(**values) for m in self.dialect.tone))
         self.session.set(*self.dialect.source_on)
+
+    def check(self) -> None:
+        """Ask, after a reading, whether the tone was what it should be.
+
+        Raises
+        ------
+        InvalidMeasurement
+            If its reference is not locked.
+        InstrumentError, TransportError, ReplyError
+        """
+        if int(self.session.query_float(self.dialect.condition)) & (1 << self.dialect.unlocked):
+            raise InvalidMeasurement(
+                f"{self.session.name} reports an unlocked reference.",
+                "Check the reference signal and the warm-up, then run again.",
+            )
 
     def off(self) -> None:
         """Output off.

@@ -41,6 +41,8 @@ class GeneratorDialect(FileModel):
     tone: ToneMessages = Field(min_length=1)
     source_on: Messages = Field(alias="source on")
     source_off: Messages = Field(alias="source off")
+    condition: Words
+    unlocked: int = Field(ge=0, le=14)
 
 
 class SpectrumDialect(FileModel):
@@ -59,6 +61,7 @@ class SpectrumDialect(FileModel):
     form: Form
     condition: Words
     overload: int = Field(ge=0, le=14)
+    unlocked: int = Field(ge=0, le=14)
 
 
 FeedPart = Annotated[str, template(("voltage_v", "current_a")), _LENGTH]

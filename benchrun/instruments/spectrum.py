@@ -57,7 +57,7 @@ class SpectrumAnalyzer:
         Raises
         ------
         InvalidMeasurement
-            For an overload, or readings that are no numbers.
+            For an overload, an unlocked reference, or readings that are no numbers.
         InstrumentError, TransportError, ReplyError
         """
         words = self.dialect
@@ -74,10 +74,16 @@ class SpectrumAnalyzer:
         where = render(frequency_hz, Dimension.FREQUENCY)
         if len(trace) == 0 or not np.isfinite(trace).all() or np.max(np.abs(trace)) > 1e6:
             raise InvalidMeasurement(f"{self.session.name} gave no numbers near {where}.", "Read again.")
-        if int(self.session.query_float(words.condition)) & (1 << words.overload):
+        bits = int(self.session.query_float(words.condition))
+        if bits & (1 << words.overload):
             raise InvalidMeasurement(
                 f"{self.session.name} reports an overload near {where}.",
                 "Put a pad before it or lower the source level, then read again.",
+            )
+        if bits & (1 << words.unlocked):
+            raise InvalidMeasurement(
+                f"{self.session.name} reports an unlocked reference near {where}.",
+                "Check the reference signal and the warm-up, then read again.",
             )
         return float(np.max(trace))
 

@@ -46,6 +46,7 @@ class ToneExecution:
                 generator.tone(step.at, float(level))
                 for j, frequency in enumerate(wanted):
                     read[i, j] = spectrum.level(float(frequency), step.bandwidth, float(level) + expected_db)
+                generator.check()
                 drawn[i] = work.drawn_a()
             generator.off()
             raw = Levels(levels, read, drawn)
