@@ -184,7 +184,10 @@ def test_arguments(cli, tmp_path, arguments, words):
     [
         ((), "Usage:"),
         (("rehears",), "there is no command 'rehears'. Did you mean 'rehearse'?"),
-        (("xyz",), "there is no command 'xyz'. There are audit, bench, check, keys, match, overnight, rehearse, resume, run"),
+        (
+            ("xyz",),
+            "there is no command 'xyz'. There are audit, bench, check, keys, match, overnight, rehearse, resume, run",
+        ),
         (("rehearse",), "Missing argument 'SEQUENCE'"),
         (("rehearse", "filter.yaml", "--sed", "1"), "No such option"),
         (("rehearse", "filter.yaml", "--seed", "-1"), "-1 is not in the range"),
