@@ -44,6 +44,8 @@ class Calibration:
         Reference impedance, from the kit.
     basis
         How it was made, for a propagation to make it again; None where no sources are declared.
+    standards
+        Raw readings it was made of, by the text of their hook-up.
     """
 
     f_hz: FloatArray
@@ -53,6 +55,7 @@ class Calibration:
     noise: Data | None
     z0_ohm: float
     basis: Basis | None = None
+    standards: Mapping[str, TwoPort] = field(default_factory=dict)
 
 
 @dataclass(slots=True, eq=False)

@@ -71,7 +71,9 @@ class CalibrateArithmetic:
             setup, hookups = procedure.sequence.sweeps[step.sweep], self.hookups(step, procedure)
             made = procedure.sources.noise(setup.bandwidth, setup.power, setup.averages)
             basis = Basis(method, ports, kit, hookups, swept, made, step.isolation, options)
-        state.calibrations[step.name] = Calibration(f_hz, ports, terms, examiner, noise, kit.z0_ohm, basis)
+        state.calibrations[step.name] = Calibration(
+            f_hz, ports, terms, examiner, noise, kit.z0_ohm, basis, swept
+        )
 
 
 def sure_doubts(step: Calibrate, procedure: Procedure, readings: Readings) -> list[Suspicion]:

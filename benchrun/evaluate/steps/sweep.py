@@ -4,17 +4,21 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+import numpy as np
+
+from benchrun.errors import InvalidMeasurement
 from benchrun.evaluate.network import Data, Network
 from benchrun.evaluate.procedure import Procedure
 from benchrun.evaluate.propagation.trail import Trail
 from benchrun.evaluate.readings import Raw, two_ports
-from benchrun.evaluate.state import State, agree
+from benchrun.evaluate.state import Calibration, State, agree
 from benchrun.hookup import Hookup
 from benchrun.rf.calibration.one_path import turned_round
 from benchrun.rf.calibration.one_port import own_reflection
+from benchrun.rf.calibration.switch_terms import SWITCH_READING
 from benchrun.rf.terms import OnePortTerms, TwelveTerms
 from benchrun.rf.tone import Tone
-from benchrun.rf.twoport import TwoPort
+from benchrun.rf.twoport import ComplexArray, TwoPort
 from benchrun.sequence.steps import Calibrate, Sweep
 
 __all__ = ["SweepArithmetic", "correct"]
@@ -26,6 +30,40 @@ def correct(terms: object, raw: TwoPort, ports: tuple[int, ...]) -> Data:
         return terms.correct(raw)
     assert isinstance(terms, OnePortTerms)  # the two kinds of terms that methods solve for
     return terms.correct(own_reflection(raw, ports[0]))
+
+
+def _refuse_standard(calibration: Calibration, raw: TwoPort) -> None:
+    """Nothing is concluded about a unit whose reading is that of a standard: it was not connected yet.
+
+    Two connections of like parts differ by their joints; a reading that differs from a standard's by no more
+    than noise is of the very same connection.
+
+    Raises
+    ------
+    InvalidMeasurement
+        Naming what is still connected.
+    """
+    for text, standard in calibration.standards.items():
+        if text == SWITCH_READING:
+            continue
+        if len(calibration.ports) == 2:
+            pairs = list(zip(raw.planes, standard.planes, strict=True))
+        else:
+            port = calibration.ports[0]
+            pairs = [(own_reflection(raw, port), own_reflection(standard, port))]
+        if all(_rms(a - b) < _SAME * _rms(b) + _NOISE for a, b in pairs):
+            raise InvalidMeasurement(
+                f"The unit reads like {text!r}, as if that were still connected.",
+                "Connect the unit, tighten it, and run again.",
+            )
+
+
+def _rms(plane: ComplexArray) -> float:
+    return float(np.sqrt(np.mean(np.abs(plane) ** 2)))
+
+
+_SAME, _NOISE = 4e-4, 1e-5
+"""Readings of one connection differ by less: trace noise in proportion, and the noise floor."""
 
 
 class SweepArithmetic:
@@ -54,6 +92,7 @@ class SweepArithmetic:
             return
         calibration = state.calibrations[step.with_]
         residual = procedure.residual_of(procedure.sequence.sweep_of(step))
+        _refuse_standard(calibration, raw)
         nominal = correct(calibration.terms, raw, calibration.ports)
         agree(state, step.name, nominal, calibration.examiner(raw))
         varied, systematic = None, 0
