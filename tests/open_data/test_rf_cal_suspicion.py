@@ -13,7 +13,7 @@ import pytest
 
 from benchrun.rf.calibration import define
 from benchrun.rf.calibration.suspicion import Suspicion, suspect
-from benchrun.rf.kit import Kit, Standard
+from benchrun.rf.kit import Kit, Offset, Standard
 from benchrun.rf.touchstone import read
 from benchrun.rf.twoport import TwoPort
 
@@ -85,3 +85,24 @@ def test_short_and_open_exchanged_on_raw_readings(splitter) -> None:
 def test_a_short_on_the_wrong_port(attenuator) -> None:
     found = doubts(attenuator, short_on_port_1="short on port 2")["short on port 1"]
     assert "wrong port" in found.reason
+
+
+def test_a_measured_one_port_calibration_raises_no_sure_suspicion() -> None:
+    """Its receiver has a phase of its own, so that a hint is all that may come."""
+    offset = Offset(33e-12, 2.3e9)
+    kit = Kit(
+        "field",
+        {
+            "short": Standard("short", offset),
+            "open": Standard("open", offset),
+            "load": Standard("load", offset, resistance_ohm=49.8),
+        },
+    )
+    files, readings = {"short": "short", "open": "open", "load": "match"}, {}
+    for name, file in files.items():
+        path = f"antenna_oneport/raw_{file}.s1p"
+        data = read((FOLDER / path).read_bytes(), path)
+        plane, zero = data.s[:, 0, 0], np.zeros(len(data.f_hz), complex)
+        readings[f"{name} on port 1"] = TwoPort(plane, zero, zero, zero)
+    found = suspect(define(kit, tuple(files), data.f_hz), readings, data.f_hz)
+    assert all(s.confidence <= 0.5 for s in found)

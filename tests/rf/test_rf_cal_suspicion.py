@@ -6,8 +6,9 @@ import numpy as np
 import pytest
 
 from benchrun.rf.calibration import define
-from benchrun.rf.calibration.plausibility import intercept_rad, noisiness, steadiness
-from benchrun.rf.calibration.suspicion import Suspicion, suspect
+from benchrun.rf.calibration.doubts import jumps
+from benchrun.rf.calibration.plausibility import delay_s, intercept_rad, noisiness, steadiness
+from benchrun.rf.calibration.suspicion import SURE, Suspicion, suspect, unsteady
 from benchrun.rf.deembedding.halves import within
 from benchrun.rf.kit import Kit, Offset, Standard
 from benchrun.rf.twoport import TwoPort
@@ -263,3 +264,135 @@ def test_jumps_against_the_typical_bend() -> None:
     smooth[50] += 0.1
     assert noisiness(smooth)[1] == pytest.approx(0.2, rel=0.01)
     assert typical < 1e-9
+
+
+LOG_HZ = np.geomspace(5e6, 1.2e9, 801)
+
+
+@pytest.mark.parametrize("delay", [4.9e-9, 12e-9, 60e-9])
+def test_a_long_cable_on_a_logarithmic_grid_does_not_jump(delay: float) -> None:
+    """Its phase turns by up to half a turn between the last points: a cable, and no loose contact."""
+    plane = 0.05 + 0.8 * np.exp(-4j * np.pi * LOG_HZ * delay)
+    assert delay_s(plane, LOG_HZ) == pytest.approx(2 * delay, rel=0.02)
+    assert not jumps(plane, LOG_HZ, 0.8)
+
+
+def test_a_single_point_off_jumps_on_a_logarithmic_grid() -> None:
+    plane = 0.05 + 0.8 * np.exp(-4j * np.pi * LOG_HZ * 4.9e-9)
+    plane[300] *= 0.7
+    assert jumps(plane, LOG_HZ, 0.8)
+
+
+def test_receivers_with_a_phase_of_their_own_raise_no_suspicion() -> None:
+    """Half a turn of it looks like short and open exchanged, were phase at zero frequency believed."""
+    readings = {n: x.map(lambda p: -p) for n, x in Bench(3).readings().items()}
+    assert doubts(readings) == {}
+
+
+def test_without_the_other_port_a_phase_of_half_a_turn_is_a_hint_only() -> None:
+    zero = np.zeros(POINTS, complex)
+    one = {n: TwoPort(-x.s11, zero, zero, zero) for n, x in Bench(3).readings().items() if "port 1" in n}
+    found = doubts({n: x for n, x in one.items() if n != THRU and "line" not in n})
+    assert set(found) == {"short on port 1", "open on port 1"}
+    assert all(s.confidence <= 0.5 for s in found.values())
+
+
+def test_a_load_left_on_a_port_at_rest_is_no_fault() -> None:
+    """Whoever serves port 2 may leave the load of port 1 where it is."""
+    bench = Bench(4)
+    readings = bench.readings()
+    load = np.asarray(TRUTHS["load"])
+    for name in ("short", "open", "load"):
+        readings[f"{name} on port 2"] = bench.read(load, np.asarray(TRUTHS[name]))
+    assert doubts(readings) == {}
+
+
+def test_the_open_on_the_wrong_port_of_a_one_port_calibration() -> None:
+    """Nothing but the other port, which nobody should have touched, tells."""
+    bench = Bench(2)
+    open_ = np.asarray(TRUTHS["open"])
+    readings = {f"{n} on port 1": bench.on(n, 1) for n in ("short", "open", "load")}
+    assert doubts(readings) == {}
+    readings["open on port 1"] = bench.read(None, open_)
+    found = doubts(readings)["open on port 1"]
+    assert "wrong port" in found.reason
+    assert found.confidence > SURE
+
+
+def test_a_short_on_the_wrong_port_shows_with_the_second_standard() -> None:
+    bench = Bench(2)
+    readings = {
+        "short on port 1": bench.read(None, np.asarray(TRUTHS["short"])),
+        "open on port 1": bench.on("open", 1),
+    }
+    found = doubts(readings)["short on port 1"]
+    assert found.confidence > SURE
+    assert "nearly like the open" in found.reason
+
+
+def test_two_alike_are_both_doubted_the_later_one_more() -> None:
+    bench = Bench(2)
+    readings = {"short on port 1": bench.on("open", 1), "open on port 1": bench.on("open", 1)}
+    found = doubts(readings)
+    assert found["open on port 1"].confidence > found["short on port 1"].confidence > SURE
+
+
+def test_a_port_at_rest_says_which_of_two_that_are_alike_is_wrong() -> None:
+    bench = Bench(2)
+    readings = bench.readings()
+    readings["short on port 2"] = bench.on("open", 2)
+    found = doubts(readings)
+    assert found["short on port 2"].looks_like == "open"
+    assert "open on port 2" not in found
+
+
+@pytest.mark.parametrize(("name", "share"), [("short", 0.9), ("thru", 0.93)])
+def test_a_lossy_contact_shows_in_the_thru(name: str, share: float) -> None:
+    """Half a decibel and more: a short that gives back too little, or a thru that passes too little."""
+    bench = Bench(3)
+    readings = bench.readings()
+    thru = TRUTHS["thru"]
+    assert isinstance(thru, TwoPort)
+    if name == "thru":
+        readings[THRU] = bench.join(thru.map(lambda p: p * share))
+        text = THRU
+    else:
+        readings["short on port 2"] = bench.read(None, share**2 * np.asarray(TRUTHS["short"]))
+        text = "short on port 2"
+    first = suspect(TRUTHS, {n: x for n, x in readings.items() if "line" not in n}, F_HZ)[0]
+    assert first.hookup == text
+    assert first.confidence > SURE
+
+
+@pytest.mark.parametrize("text", ["load on port 1", THRU])
+def test_two_sweeps_of_one_connection_agree_or_it_is_loose(text: str) -> None:
+    """A tenth of an ohm more in the contact reflects 0.1 % more; noise of the same size means nothing."""
+    bench = Bench(5)
+    truth = TRUTHS["load"]
+
+    def sweep(more: float) -> TwoPort:
+        if text == THRU:
+            thru = TRUTHS["thru"]
+            assert isinstance(thru, TwoPort)
+            return bench.join(thru.map(lambda p: p * (1 - more)))
+        return bench.read(np.asarray(truth) + more, None)
+
+    assert unsteady(text, sweep(0.0), sweep(0.0)) is None
+    found = unsteady(text, sweep(0.0), sweep(2e-3))
+    assert found is not None
+    assert found.looks_like == "loose"
+    assert found.hookup == text
+
+
+def test_noise_is_no_loose_contact() -> None:
+    bench = Bench(6)
+    pair = [
+        bench.on("load", 1).map(lambda p: p + 1e-3 * bench.random.standard_normal(POINTS)) for _ in range(2)
+    ]
+    assert unsteady("load on port 1", *pair) is None
+
+
+def test_where_nothing_at_all_is_read_no_connection_is_to_blame() -> None:
+    zero = np.zeros(POINTS, complex)
+    nothing = TwoPort(zero, zero, zero, zero)
+    assert doubts({"short on port 1": nothing, "open on port 1": nothing, THRU: nothing}) == {}

@@ -92,7 +92,9 @@ def doubt_port(at: PortReadings, definitions: Definitions, f_hz: FloatArray) -> 
     found += _as_at_rest(at, truths)
     found += _levels(at, truths, strong)
     known = {s.hookup for s in found}
-    found += [s for s in _signs(at, truths) if not known & {at.text("short"), at.text("open")}]
+    if not known & {at.text("short"), at.text("open")}:
+        found += _signs(at, truths)
+        known = {s.hookup for s in found}
     found += [s for s in _unchanged(at) if not known & {s.hookup, at.text(s.looks_like)}]
     found += [s for s in _moved_across(at) if s.hookup not in known]
     three = {n: at.own[n] for n in REFLECTIONS if n in truths}

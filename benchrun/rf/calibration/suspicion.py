@@ -79,7 +79,9 @@ def suspect(definitions: Definitions, readings: Readings, f_hz: FloatArray) -> l
     for at in ports.values():
         found += doubt_port(at, thin_definitions, f_hz[some])
     joins = {m["name"]: two for text, two in thin.items() if (m := _JOINING.match(text))}
-    return surest(found + doubt_joins(joins, ports, thin_definitions))
+    # What the thru says about standards means nothing while one of them is known to be wrong.
+    believed = {} if any(s.confidence > SURE for s in found) else ports
+    return surest(found + doubt_joins(joins, believed, thin_definitions))
 
 
 def _jumping(readings: Readings, f_hz: FloatArray) -> list[Suspicion]:
