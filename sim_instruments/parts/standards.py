@@ -82,6 +82,7 @@ def _offset(f_hz: Real, delay: float, loss: float, z_line: float) -> Matrix:
     w = 2 * np.pi * f_hz
     r = loss * delay * np.sqrt(f_hz / 1e9)
     series, shunt = r + 1j * (w * delay * z_line + r), 1j * w * delay / z_line
-    gamma, zc = np.sqrt(series * shunt), np.sqrt(series / shunt)
+    # The principal root would make a line shorter than nothing one longer than nothing.
+    gamma, zc = np.copysign(1.0, delay) * np.sqrt(series * shunt), np.sqrt(series / shunt)
     cosh, sinh = np.cosh(gamma), np.sinh(gamma)
     return from_abcd(cosh, zc * sinh, sinh / zc, cosh)

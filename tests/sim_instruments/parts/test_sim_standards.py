@@ -77,3 +77,12 @@ def test_an_unknown_standard_is_refused() -> None:
     """With its name."""
     with pytest.raises(ValueError, match="there is no standard 'sliding load'"):
         build({"kind": "standard", "standard": "sliding load"}, Draws(1))
+
+
+def test_a_thru_shorter_than_its_definition_turns_the_phase_forward() -> None:
+    """A drawn delay may be negative: exp(-j w tau) then leads, and loses its sign nowhere."""
+    f = np.array([1e9])
+    short = build({"kind": "standard", "standard": "thru", "delay": -0.1e-12}, Draws(1)).matrix(f)
+    long = build({"kind": "standard", "standard": "thru", "delay": 0.1e-12}, Draws(1)).matrix(f)
+    assert np.angle(short[0, 1, 0]) == pytest.approx(2 * np.pi * 1e9 * 0.1e-12)
+    assert np.angle(long[0, 1, 0]) == pytest.approx(-2 * np.pi * 1e9 * 0.1e-12)
