@@ -213,8 +213,9 @@ def one(number: int, folder: Path, undisturbed: dict[int, object], tally: collec
                 story, _ = take_up(path, TODAY)
             except NothingDone:
                 continue
-            for unit in story.units:
-                stood.setdefault(unit.serial, set()).update(unit.finished)
+            # Of units whose record stands nothing is done any more, whatever the journal still says of them.
+            whole = {read(f).payload.unit.serial for f in records.iterdir() if not f.name.startswith(".")}
+            stood = {u.serial: u.finished for u in story.units if u.serial not in whole}
     if records.is_dir():
         for path in records.iterdir():  # whatever shows under a name is whole
             if not path.name.startswith("."):
