@@ -18,6 +18,7 @@ from __future__ import annotations
 import collections
 import datetime
 import itertools
+import statistics
 import sys
 import time
 from dataclasses import dataclass, field
@@ -111,7 +112,7 @@ def judged(bench: Bench, unit: dict[str, dict[str, Raw]], made: Made) -> tuple[J
     state = State(bench.procedure, thorough=False)
     try:
         for step in bench.procedure.sequence.steps:
-            apply(step, state, made.readings if step is bench.step else unit.get(step.name, {}))
+            apply(step, state, made.readings if step.name == bench.step.name else unit.get(step.name, {}))
     except InvalidMeasurement:
         return None
     return state.figures
@@ -123,7 +124,7 @@ def matters(bench: Bench, sound: Bench, made: Made, serial: str) -> bool:
     sound.world.offer(serial)
     unit: dict[str, dict[str, Raw]] = {}
     for step in bench.procedure.sequence.steps:
-        if step is not bench.step and (needed := hookups(step, bench.procedure)):
+        if step.name != bench.step.name and (needed := hookups(step, bench.procedure)):
             unit[step.name] = {}
             for hookup in needed:
                 sound.connect(hookup)
@@ -146,7 +147,7 @@ def faulty(plans: dict[str, Plan], number: int, twice: bool) -> int:
     counts: collections.Counter[str] = collections.Counter()
     escaped: collections.Counter[str] = collections.Counter()
     misnamed: collections.Counter[str] = collections.Counter()
-    slowest_s = 0.0
+    slowest_s: list[float] = []
     cases = ((seed, *case) for seed in itertools.count(1)
              for case in itertools.product(plans, FAULTS, range(CONNECTIONS)))  # fmt: skip
     for seed, sequence, fault, after in cases:
@@ -158,7 +159,7 @@ def faulty(plans: dict[str, Plan], number: int, twice: bool) -> int:
         if not made.struck:
             continue  # no such occasion in this calibration
         counts["all"] += 1
-        slowest_s = max(slowest_s, made.slowest_s)
+        slowest_s.append(made.slowest_s)
         what = f"{sequence}: {fault} at {made.struck}"
         if made.first is None:
             counts["quiet"] += 1
@@ -175,7 +176,9 @@ def faulty(plans: dict[str, Plan], number: int, twice: bool) -> int:
     print(f"with one fault each: {counts['all']}; neither doubted nor harmful: {harmless}")
     print(f"caught, of those doubted or harmful: {caught / counted:.2%} (at least 99 %)")
     print(f"named, of those caught: {counts['named'] / caught:.2%} (at least 95 %)")
-    print(f"dearest doubt: {1e3 * slowest_s:.1f} ms of processor time (at most 5)")
+    typical_ms, greatest_ms = 1e3 * statistics.median(slowest_s), 1e3 * max(slowest_s)
+    print(f"dearest doubt of a calibration: {typical_ms:.1f} ms of processor time in the median (at most 5), "
+          f"{greatest_ms:.1f} ms at most")  # fmt: skip
     for title, table in (("escaped", escaped), ("named wrongly", misnamed)):
         for what, times in table.most_common():
             print(f"  {title}, {times} times: {what}")
