@@ -13,8 +13,10 @@ class JudgeExecution:
     """Judge every limit."""
 
     def words(self, step: Judge, work: AtWork) -> str:
-        """How many limits, by which rule."""
-        return f"{len(step.limits)} limits on {step.from_}, {step.rule.text}"
+        """How many figures and masks (each may hold several limits), by which rule."""
+        count = len(step.limits)
+        what = "figure or mask" if count == 1 else "figures and masks"
+        return f"{count} {what} of {step.from_}, {step.rule.text}"
 
     def carry_out(self, step: Judge, work: AtWork) -> None:
         """Arithmetic, then one event for each figure."""
