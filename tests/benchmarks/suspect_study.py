@@ -188,7 +188,8 @@ def faulty(plans: dict[str, Plan], number: int, twice: bool) -> int:
 def sound(plans: dict[str, Plan], number: int, twice: bool) -> int:
     """Calibrations without fault; gives 1 if too many are doubted."""
     doubted: collections.Counter[str] = collections.Counter()
-    cases = itertools.islice(itertools.product(itertools.count(1), ANALYZERS, plans), number)
+    every = ((seed, *case) for seed in itertools.count(1) for case in itertools.product(ANALYZERS, plans))
+    cases = itertools.islice(every, number)
     for seed, analyzer, sequence in cases:
         made = calibrate(Bench(plans[sequence], analyzer, seed), twice)
         if made.first is not None:
